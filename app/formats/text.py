@@ -31,6 +31,8 @@ def numbered_lines(text: str) -> list[tuple[int, str]]:
 
 def shown(value: object) -> str:
     """Quote a foreign value for a one-line message: short and printable, whatever is in it."""
+    if isinstance(value, dict | list):
+        return "an object" if isinstance(value, dict) else "a list"
     text = value if isinstance(value, str) else str(value)
     return repr(text if len(text) <= SHOWN_LENGTH else text[: SHOWN_LENGTH - 3] + "...")
 

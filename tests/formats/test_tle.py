@@ -144,7 +144,10 @@ def test_wrong_line_2_is_refused(column: int, text: str, says: str):
     assert says in str(error)
 
 
-@given(column=st.integers(19, 68), digit=st.sampled_from("0123456789"))
+DIGITS = [column for column, character in enumerate(ONE, start=1) if character.isdigit() and column > 8]
+
+
+@given(column=st.sampled_from(DIGITS), digit=st.sampled_from("0123456789"))
 def test_any_changed_digit_is_caught_by_the_checksum(column: int, digit: str):
     damaged = changed(sealed(ONE), column, digit)
     read = isinstance(read_tle(f"{damaged}\n{sealed(TWO)}", "kestrel.tle")[0], MeanElements)
