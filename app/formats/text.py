@@ -31,10 +31,11 @@ def numbered_lines(text: str) -> list[tuple[int, str]]:
 
 def shown(value: object) -> str:
     """Quote a foreign value for a one-line message: short and printable, whatever is in it."""
-    if isinstance(value, dict | list):
-        return "an object" if isinstance(value, dict) else "a list"
-    text = value if isinstance(value, str) else str(value)
-    return repr(text if len(text) <= SHOWN_LENGTH else text[: SHOWN_LENGTH - 3] + "...")
+    if value is None or isinstance(value, dict | list):
+        return "null" if value is None else "an object" if isinstance(value, dict) else "a list"
+    text = str(value)
+    short = text if len(text) <= SHOWN_LENGTH else text[: SHOWN_LENGTH - 3] + "..."
+    return short if isinstance(value, int | float) else repr(short)
 
 
 def name_problem(text: str) -> str | None:
