@@ -120,12 +120,13 @@ class _Reading:
     def elements(self) -> MeanElements:
         self._check_frame_of_reference()
         self._check_keywords()
+        name, object_id = self._name("OBJECT_NAME"), self._object_id()
         epoch_jd, epoch_fraction = self._epoch()
         numbers = {number.field: self._number(keyword) for keyword, number in NUMBERS.items()}
         try:
             return MeanElements(
-                object_name=self._name("OBJECT_NAME"),
-                object_id=self._object_id(),
+                object_name=name,
+                object_id=object_id,
                 epoch_jd=epoch_jd,
                 epoch_fraction=epoch_fraction,
                 **numbers,
