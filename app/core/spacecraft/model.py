@@ -24,6 +24,16 @@ class CriterionKind(StrEnum):
     MASS = "mass"  # the particle has at least this mass
 
 
+# Thresholds outside these ranges ask the flux laws for masses nobody has measured (Gruen et al. 1985
+# state theirs for 1e-18 to 1e2 g).
+THRESHOLD_LIMITS: dict[CriterionKind, tuple[str, float, float]] = {
+    CriterionKind.PENETRATION: ("wall_mm", 1e-3, 1e3),
+    CriterionKind.CHARGE: ("min_charge_c", 1e-15, 1e4),
+    CriterionKind.ENERGY: ("min_energy_j", 1e-12, 1e9),
+    CriterionKind.MASS: ("min_mass_g", 1e-18, 1e4),
+}
+
+
 @dataclass(frozen=True)
 class Criterion:
     """One harm threshold: ``threshold`` is wall_mm, min_charge_c, min_energy_j or min_mass_g by kind.
@@ -37,7 +47,11 @@ class Criterion:
     label: str = ""
 
     def __post_init__(self) -> None:
-        _positive("criteria.threshold", self.threshold)
+        field_name, low, high = THRESHOLD_LIMITS[self.kind]
+        if not low <= self.threshold <= high:
+            raise FieldError(
+                f"criteria.{field_name}", f"is {self.threshold!r}; it must lie between {low:g} and {high:g}"
+            )
         if not self.label:
             object.__setattr__(self, "label", self.kind.value)
 

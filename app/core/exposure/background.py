@@ -1,0 +1,130 @@
+"""The everyday hazard on each face: the isotropic sporadic flux as a moving, partly shielded face sees it.
+
+At a place r the isotropic flux of one free-space speed stays uniform over the directions that are not
+blocked (Liouville), with local speed v^2 = v_inf^2 + 2 mu/r and flux G = v^2/v_inf^2 times that of free space
+(Opik 1951). Blocked are velocities within alpha of the local vertical, upward, with
+sin(alpha) = R/r sqrt((1 + 2a/R)/(1 + 2a/r)), a = mu/v_inf^2: bent rays, not straight ones.
+"""
+
+from __future__ import annotations
+
+from functools import cache
+
+import numpy as np
+import numpy.typing as npt
+
+from app.core.constants import BLOCKING_RADIUS_KM, MU_EARTH_KM3_S2
+from app.core.exposure.damage import CriticalMass, critical_mass
+from app.core.exposure.faces import Places, criterion_rows
+from app.core.spacecraft.attitude import body_axes, face_normals
+from app.core.spacecraft.model import Spacecraft
+from app.core.streams.sporadic import SPORADIC_DENSITY_KG_M3, SpeedDistribution, gruen_flux_per_m2_s
+
+Floats = npt.NDArray[np.float64]
+POLAR_NODES, AZIMUTH_NODES = 16, 32  # 0.1 % on a face at the horizon of a low orbit
+
+
+def background_rates(
+    spacecraft: Spacecraft, places: Places, weights: Floats, speeds: SpeedDistribution
+) -> Floats:
+    """Background hazard rate of each (face, criterion) row, (C,), per m2 and second.
+
+    ``places``: P orbit phases, arrays (3, P); ``weights``: (P,), share of time of each, sum 1.
+    Source: Gruen et al. 1985 flux; ``speeds`` says how it is shared among speeds.
+    """
+    axes = body_axes(spacecraft.attitude, places.r_km, places.v_km_s, places.sun_km)
+    normals = face_normals(spacecraft, axes, places.r_km, places.sun_km)
+    total = np.zeros(len(criterion_rows(spacecraft)))
+    for phase, weight in enumerate(weights):
+        r_km, v_km_s = places.r_km[:, phase], places.v_km_s[:, phase]
+        velocity, density = relative_sky(r_km, v_km_s, speeds)
+        total += weight * _on_faces(spacecraft, velocity, density, normals[:, :, phase])
+    return total
+
+
+def relative_sky(r_km: Floats, v_km_s: Floats, speeds: SpeedDistribution) -> tuple[Floats, Floats]:
+    """The sporadic sky as a quadrature at one place: relative velocities (3, N), km/s, and densities (N,).
+
+    A density is the number per volume, per unit of Gruen flux, that moves so: s/km.
+    """
+    distance = float(np.linalg.norm(r_km))
+    v_inf = speeds.v_inf_km_s
+    local = np.sqrt(np.square(v_inf) + 2.0 * MU_EARTH_KM3_S2 / distance)
+    direction, solid_angle = _open_sky(_blocked_cosine(distance, v_inf))
+    density = (speeds.free_space_share * local / np.square(v_inf) / np.pi)[:, None] * solid_angle
+    vertical = _vertical_frame(r_km)
+    velocity = np.einsum("ik,knd->ind", vertical, local[:, None] * direction) - v_km_s[:, None, None]
+    return velocity.reshape(3, -1), density.ravel()
+
+
+def shielded_share(distance_km: float, v_inf_km_s: Floats) -> Floats:
+    """Share of the sky that is open, (1 + cos alpha)/2, for each speed."""
+    share: Floats = 0.5 * (1.0 + _blocked_cosine(distance_km, v_inf_km_s))
+    return share
+
+
+def _blocked_cosine(distance_km: float, v_inf_km_s: Floats) -> Floats:
+    pull = MU_EARTH_KM3_S2 / np.square(v_inf_km_s)
+    bent = (1.0 + 2.0 * pull / BLOCKING_RADIUS_KM) / (1.0 + 2.0 * pull / distance_km)
+    sine2 = (BLOCKING_RADIUS_KM / distance_km) ** 2 * bent
+    cosine: Floats = np.sqrt(np.maximum(1.0 - sine2, 0.0))
+    return cosine
+
+
+def _open_sky(blocked_cosine: Floats) -> tuple[Floats, Floats]:
+    """Directions of motion (3, K, D), z up, and solid angles (K, D), from straight down to the blocked cone."""
+    x, weight = np.polynomial.legendre.leggauss(POLAR_NODES)
+    half = 0.5 * (blocked_cosine + 1.0)[:, None]
+    up = half * (x + 1.0) - 1.0
+    azimuth = (np.arange(AZIMUTH_NODES) + 0.5) * (2.0 * np.pi / AZIMUTH_NODES)
+    level = np.sqrt(1.0 - np.square(up))[:, :, None]
+    shape = (len(blocked_cosine), POLAR_NODES, AZIMUTH_NODES)
+    direction = np.stack(
+        [level * np.cos(azimuth), level * np.sin(azimuth), np.broadcast_to(up[:, :, None], shape)]
+    )
+    solid_angle = np.broadcast_to((half * weight)[:, :, None] * (2.0 * np.pi / AZIMUTH_NODES), shape)
+    return direction.reshape(3, shape[0], -1), solid_angle.reshape(shape[0], -1)
+
+
+def _vertical_frame(r_km: Floats) -> Floats:
+    """Matrix (3, 3) whose columns are two level directions and the vertical, GCRF."""
+    up = r_km / np.linalg.norm(r_km)
+    helper = np.eye(3)[np.argmin(np.abs(up))]
+    level = np.cross(up, helper)
+    level /= np.linalg.norm(level)
+    return np.column_stack([level, np.cross(up, level), up])
+
+
+def _on_faces(spacecraft: Spacecraft, velocity: Floats, density: Floats, normals: Floats) -> Floats:
+    """Hazard of each (face, criterion) row, (C,), for a quadrature of the sky."""
+    inward = np.maximum(-(normals @ velocity), 0.0)
+    log_speed = 0.5 * np.log(np.einsum("kn,kn->n", velocity, velocity))
+    shared: dict[CriticalMass, Floats] = {}
+    rates = []
+    for row in criterion_rows(spacecraft):
+        limit = critical_mass(row.criterion, SPORADIC_DENSITY_KG_M3)
+        on_face = inward[row.face]
+        if limit.normal_speed:
+            lit = on_face > 0.0
+            above = _gruen_above(limit, np.log(on_face[lit]))
+            rates.append(np.dot(on_face[lit] * density[lit], above))
+            continue
+        if limit not in shared:
+            shared[limit] = density * _gruen_above(limit, log_speed)
+        rates.append(np.dot(on_face, shared[limit]))
+    return np.array(rates)
+
+
+def _gruen_above(limit: CriticalMass, log_speed: Floats) -> Floats:
+    """Gruen flux above the critical mass at speeds given by their natural logarithm."""
+    log_mass, log_flux = _gruen_table()
+    wanted = np.log(limit.at_1_km_s_g) - limit.speed_exponent * log_speed
+    flux: Floats = np.exp(np.interp(wanted, log_mass, log_flux))
+    return flux
+
+
+@cache
+def _gruen_table() -> tuple[Floats, Floats]:
+    # Natural logarithms of mass (g) and flux; linear between points 0.01 apart is good to 3e-6.
+    log_mass = np.arange(-100.0, 70.0, 0.01)
+    return log_mass, np.log(gruen_flux_per_m2_s(np.exp(log_mass)))

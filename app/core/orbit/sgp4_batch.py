@@ -1,0 +1,50 @@
+"""SGP4 for many satellites on one time grid, through the compiled array propagator."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+import numpy.typing as npt
+from sgp4.api import SGP4_ERRORS, SatrecArray
+
+from app.core.constants import BLOCKING_RADIUS_KM
+from app.core.orbit.elements import MeanElements
+from app.core.orbit.sgp4_records import satrec
+from app.core.sky.frames import rotate
+from app.core.sky.times import TimeGrid, format_utc
+
+Floats = npt.NDArray[np.float64]
+
+
+@dataclass(frozen=True)
+class Ephemeris:
+    """States of N satellites at T instants: ``r_km``, ``v_km_s`` (N, T, 3) GCRF; ``error`` (N, T) SGP4 codes."""
+
+    r_km: Floats
+    v_km_s: Floats
+    error: npt.NDArray[np.uint8]
+
+
+def propagate(elements: Sequence[MeanElements], grid: TimeGrid) -> Ephemeris:
+    """Propagate N element sets to T instants, TEME turned into GCRF with the grid's own matrices.
+
+    A satellite that SGP4 refuses at an instant has NaN there and a code in ``error``; nothing is raised.
+    """
+    array = SatrecArray([satrec(one) for one in elements])
+    error, r_teme, v_teme = array.sgp4(*grid.utc)
+    return Ephemeris(rotate(grid.teme_to_gcrf, r_teme), rotate(grid.teme_to_gcrf, v_teme), error)
+
+
+def first_failure(ephemeris: Ephemeris, satellite: int, grid: TimeGrid) -> str | None:
+    """Say in words why and when a satellite cannot be used on this grid; None when it can."""
+    bad = np.flatnonzero(ephemeris.error[satellite])
+    if len(bad):
+        code = int(ephemeris.error[satellite, bad[0]])
+        why = SGP4_ERRORS.get(code, "unknown error")
+        return f"SGP4 error {code} at {format_utc(grid.unix_s[bad[0]])}: {why}"
+    low = np.flatnonzero(np.linalg.norm(ephemeris.r_km[satellite], axis=-1) < BLOCKING_RADIUS_KM)
+    if len(low):
+        return f"below {BLOCKING_RADIUS_KM:.0f} km (100 km of air) at {format_utc(grid.unix_s[low[0]])}: decaying"
+    return None

@@ -1,0 +1,89 @@
+"""Attitude laws: where each face looks, in GCRF."""
+
+from __future__ import annotations
+
+import numpy as np
+import numpy.typing as npt
+
+from app.core.spacecraft.model import AttitudeLaw, AttitudeLawKind, Joint, Quaternion, Spacecraft
+
+Floats = npt.NDArray[np.float64]
+
+
+def lvlh_axes(r_km: Floats, v_km_s: Floats) -> Floats:
+    """LVLH axes as GCRF vectors, (axis, 3, ...): +Z nadir, +Y opposite the orbit normal, +X completes."""
+    z = -unit(r_km)
+    y = -unit(np.cross(r_km, v_km_s, axis=0))
+    return np.stack([np.cross(y, z, axis=0), y, z])
+
+
+def body_axes(law: AttitudeLaw, r_km: Floats, v_km_s: Floats, sun_km: Floats) -> Floats:
+    """Body axes as GCRF vectors, (axis, 3, ...), under an attitude law.
+
+    ``r_km``, ``v_km_s``, ``sun_km``: (3, ...) GCRF. For ``sun``: +Z to the Sun as seen from the satellite,
+    +Y as near the orbit normal as it goes.
+    """
+    if law.kind is AttitudeLawKind.NADIR:
+        return lvlh_axes(r_km, v_km_s)
+    if law.kind is AttitudeLawKind.SUN:
+        z = unit(sun_km - r_km)
+        x = unit(np.cross(np.cross(r_km, v_km_s, axis=0), z, axis=0))
+        return np.stack([x, np.cross(z, x, axis=0), z])
+    assert law.quaternion_xyzw is not None
+    fixed = rotation_matrix(law.quaternion_xyzw).T
+    return np.broadcast_to(fixed.reshape(3, 3, *([1] * (r_km.ndim - 1))), (3, *r_km.shape))
+
+
+def face_normals(spacecraft: Spacecraft, axes: Floats, r_km: Floats, sun_km: Floats) -> Floats:
+    """Outward normals of all faces, (F, 3, ...) GCRF; jointed faces follow the Sun about their axis."""
+    fixed = np.array([face.normal for face in spacecraft.faces])
+    normals = np.einsum("fa,ak...->fk...", fixed, axes)
+    joints = {joint.name: joint for joint in spacecraft.joints}
+    if joints:
+        sun_body = np.einsum("ak...,k...->a...", axes, unit(sun_km - r_km))
+        for index, face in enumerate(spacecraft.faces):
+            if face.joint is not None:
+                turned = _track(joints[face.joint], np.array(face.normal), sun_body)
+                normals[index] = np.einsum("a...,ak...->k...", turned, axes)
+    return normals
+
+
+def rotation_matrix(quaternion_xyzw: Quaternion) -> Floats:
+    """Matrix (3, 3) of a unit quaternion, scalar last: body vectors to GCRF."""
+    x, y, z, w = quaternion_xyzw
+    return np.array(
+        [
+            [1 - 2 * (y * y + z * z), 2 * (x * y - z * w), 2 * (x * z + y * w)],
+            [2 * (x * y + z * w), 1 - 2 * (x * x + z * z), 2 * (y * z - x * w)],
+            [2 * (x * z - y * w), 2 * (y * z + x * w), 1 - 2 * (x * x + y * y)],
+        ]
+    )
+
+
+def unit(vectors: Floats) -> Floats:
+    """Normalise vectors whose components are on the first axis."""
+    length = np.sqrt(np.einsum("k...,k...->...", vectors, vectors))
+    normalised: Floats = vectors / length
+    return normalised
+
+
+def _track(joint: Joint, normal: Floats, sun_body: Floats) -> Floats:
+    """Turn ``normal`` with the joint so that its ``sun_normal`` is as near the Sun as it goes: (3, ...)."""
+    axis, zero = np.array(joint.axis), np.array(joint.sun_normal)
+    zero = zero - axis * (axis @ zero)
+    zero /= np.linalg.norm(zero)
+    third = np.cross(axis, zero)
+    toward = np.einsum("k,k...->...", zero, sun_body)
+    across = np.einsum("k,k...->...", third, sun_body)
+    length = np.hypot(toward, across)
+    # With the Sun along the axis every angle is equal; the joint then rests at zero.
+    resting = length < 1e-12
+    length = np.where(resting, 1.0, length)
+    cosine, sine = np.where(resting, 1.0, toward / length), np.where(resting, 0.0, across / length)
+    along, on_zero, on_third = axis @ normal, zero @ normal, third @ normal
+    shape = (3, *([1] * cosine.ndim))
+    return (
+        axis.reshape(shape) * along
+        + zero.reshape(shape) * (on_zero * cosine - on_third * sine)
+        + third.reshape(shape) * (on_zero * sine + on_third * cosine)
+    )
