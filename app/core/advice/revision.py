@@ -1,0 +1,118 @@
+"""When an advisory is worth a new revision, and what to say has moved.
+
+A revision appears only when something an operator would act on has moved: the level, a peak factor by more
+than 10 %, a time by more than 10 minutes, a window. What already lies in the past at ``as_of`` is history and
+moves nothing. Everything here works on the advisory's own JSON form, so that the rule can be read beside it.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Mapping, Sequence
+from typing import Any
+
+from app.core.sky.times import format_utc, parse_utc
+
+Body = Mapping[str, Any]
+Change = dict[str, str]
+FACTOR_CHANGE = 0.10
+TIME_CHANGE_S = 600.0
+COVERAGE_CHANGE_S = 86400.0
+TIMES = {"onset": "onset", "peak_at": "peak", "end": "end"}
+
+
+def first() -> list[Change]:
+    """Say that there was no earlier revision."""
+    return [{"what": "new", "text": "First advisory for this passage."}]
+
+
+def changes(previous: Body, new: Body, as_of_unix_s: float) -> list[Change]:
+    """List what has moved since ``previous``; empty when a new revision would only be noise."""
+    return [
+        *_level(previous, new),
+        *_factors(previous, new, as_of_unix_s),
+        *_times(previous, new, as_of_unix_s),
+        *_windows(previous, new, as_of_unix_s),
+    ]
+
+
+def withdrawal(previous: Body, as_of_unix_s: float, reason: str) -> dict[str, Any]:
+    """Turn the latest revision into its withdrawal: nothing is left to act on."""
+    text = "Withdrawn: this advisory no longer holds; return to routine operations unless another one stands."
+    return {
+        **previous,
+        "issued_at": format_utc(as_of_unix_s),
+        "level": "steady",
+        "lee_windows": [],
+        "safe_attitude_windows": [],
+        "actions": [text],
+        "changes": [{"what": "withdrawn", "text": reason}],
+    }
+
+
+def _level(previous: Body, new: Body) -> Iterator[Change]:
+    if previous["level"] != new["level"]:
+        yield {"what": "level", "text": f"Level went from {previous['level']} to {new['level']}."}
+
+
+def _factors(previous: Body, new: Body, as_of_unix_s: float) -> Iterator[Change]:
+    if _past(previous["peak_at"], as_of_unix_s):
+        return
+    before, after = _peaks(previous), _peaks(new)
+    for key in dict.fromkeys([*before, *after]):
+        if key not in before or key not in after:
+            verb = "appeared" if key in after else "disappeared"
+            yield {"what": "peak_factor", "text": f"Peak factor for {key} {verb}."}
+        elif abs(after[key] - before[key]) > FACTOR_CHANGE * before[key]:
+            yield {
+                "what": "peak_factor",
+                "text": f"Peak factor for {key} went from {before[key]:.2f} to {after[key]:.2f}.",
+            }
+
+
+def _peaks(body: Body) -> dict[str, float]:
+    whole = {f"{e['criterion']} on the satellite": e["mid"] for e in body["satellite_enhancement_peak"]}
+    faces = {f"{e['criterion']} on face '{e['face']}'": e["mid"] for e in body["enhancement_peak"]}
+    return whole | faces
+
+
+def _times(previous: Body, new: Body, as_of_unix_s: float) -> Iterator[Change]:
+    for field, name in TIMES.items():
+        moved_s = parse_utc(new[field]) - parse_utc(previous[field])
+        if abs(moved_s) > TIME_CHANGE_S and not _past(previous[field], as_of_unix_s):
+            yield {
+                "what": field,
+                "text": f"The {name} moved by {moved_s / 60.0:+.0f} min, from {previous[field]} to {new[field]}.",
+            }
+
+
+def _windows(previous: Body, new: Body, as_of_unix_s: float) -> Iterator[Change]:
+    """Compare lee windows where both revisions looked for them; a longer look counts once it is a day longer."""
+    before_s, after_s = _covered(previous), _covered(new)
+    both = as_of_unix_s, min(before_s, after_s)
+    old, current = _starting(previous, both), _starting(new, both)
+    if not _same(old, current):
+        yield {"what": "lee_windows", "text": f"Lee windows moved: {len(current)} where there were {len(old)}."}
+    gained = _starting(new, (max(before_s, as_of_unix_s), after_s))
+    if after_s - max(before_s, as_of_unix_s) >= COVERAGE_CHANGE_S and gained:
+        until = format_utc(after_s)
+        yield {"what": "lee_windows", "text": f"{len(gained)} lee windows were added; the plan now reaches {until}."}
+
+
+def _covered(body: Body) -> float:
+    return parse_utc(body["plan_until"]) if body["plan_until"] else float("-inf")
+
+
+def _starting(body: Body, between: tuple[float, float]) -> list[tuple[float, float]]:
+    pairs = [(parse_utc(w["start"]), parse_utc(w["end"])) for w in body["lee_windows"]]
+    return [pair for pair in pairs if between[0] <= pair[0] < between[1]]
+
+
+def _same(one: Sequence[tuple[float, float]], other: Sequence[tuple[float, float]]) -> bool:
+    if len(one) != len(other):
+        return False
+    pairs = zip(one, other, strict=True)
+    return all(abs(a - b) <= TIME_CHANGE_S for x, y in pairs for a, b in zip(x, y, strict=True))
+
+
+def _past(moment: str, as_of_unix_s: float) -> bool:
+    return parse_utc(moment) <= as_of_unix_s
