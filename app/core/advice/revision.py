@@ -7,7 +7,7 @@ moves nothing. Everything here works on the advisory's own JSON form, so that th
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Iterator, Mapping
 from typing import Any
 
 from app.core.sky.times import format_utc, parse_utc
@@ -87,31 +87,46 @@ def _times(previous: Body, new: Body, as_of_unix_s: float) -> Iterator[Change]:
 
 def _windows(previous: Body, new: Body, as_of_unix_s: float) -> Iterator[Change]:
     """Compare lee windows where both revisions looked for them; a longer look counts once it is a day longer."""
-    before_s, after_s = _covered(previous), _covered(new)
-    both = as_of_unix_s, min(before_s, after_s)
-    old, current = _starting(previous, both), _starting(new, both)
-    if not _same(old, current):
-        yield {"what": "lee_windows", "text": f"Lee windows moved: {len(current)} where there were {len(old)}."}
-    gained = _starting(new, (max(before_s, as_of_unix_s), after_s))
-    if after_s - max(before_s, as_of_unix_s) >= COVERAGE_CHANGE_S and gained:
-        until = format_utc(after_s)
-        yield {"what": "lee_windows", "text": f"{len(gained)} lee windows were added; the plan now reaches {until}."}
+    before, after = _cover(previous), _cover(new)
+    both = max(before[0], after[0], as_of_unix_s), min(before[1], after[1])
+    lost = _unmatched(previous, new, both)
+    gained = _unmatched(new, previous, both)
+    if lost or gained:
+        yield {
+            "what": "lee_windows",
+            "text": f"Lee windows moved: {len(lost)} of the former ones no longer hold, {len(gained)} are new.",
+        }
+    added = [w for w in _lee(new) if w[0] >= max(before[1], as_of_unix_s)]
+    if added and after[1] - max(before[1], as_of_unix_s) >= COVERAGE_CHANGE_S:
+        until = format_utc(after[1])
+        yield {
+            "what": "lee_windows",
+            "text": f"{len(added)} lee windows were added; they now reach to {until}.",
+        }
 
 
-def _covered(body: Body) -> float:
-    return parse_utc(body["plan_until"]) if body["plan_until"] else float("-inf")
+def _cover(body: Body) -> tuple[float, float]:
+    """Where lee windows were looked for; nowhere at outlook depth."""
+    if body["lee_windows_from"] is None:
+        return float("-inf"), float("-inf")
+    return parse_utc(body["lee_windows_from"]), parse_utc(body["lee_windows_until"])
 
 
-def _starting(body: Body, between: tuple[float, float]) -> list[tuple[float, float]]:
-    pairs = [(parse_utc(w["start"]), parse_utc(w["end"])) for w in body["lee_windows"]]
-    return [pair for pair in pairs if between[0] <= pair[0] < between[1]]
+def _lee(body: Body) -> list[tuple[float, float]]:
+    return [(parse_utc(w["start"]), parse_utc(w["end"])) for w in body["lee_windows"]]
 
 
-def _same(one: Sequence[tuple[float, float]], other: Sequence[tuple[float, float]]) -> bool:
-    if len(one) != len(other):
-        return False
-    pairs = zip(one, other, strict=True)
-    return all(abs(a - b) <= TIME_CHANGE_S for x, y in pairs for a, b in zip(x, y, strict=True))
+def _unmatched(one: Body, other: Body, between: tuple[float, float]) -> list[tuple[float, float]]:
+    """Windows of ``one`` well inside a span that have no counterpart in ``other``, which saw that span too."""
+    low, high = between[0] + TIME_CHANGE_S, between[1] - TIME_CHANGE_S
+    counterparts = _lee(other)
+    return [
+        w
+        for w in _lee(one)
+        if low <= w[0]
+        and w[1] <= high
+        and not any(max(abs(w[0] - c[0]), abs(w[1] - c[1])) <= TIME_CHANGE_S for c in counterparts)
+    ]
 
 
 def _past(moment: str, as_of_unix_s: float) -> bool:

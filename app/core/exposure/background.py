@@ -16,16 +16,48 @@ import numpy.typing as npt
 from app.core.constants import BLOCKING_RADIUS_KM, MU_EARTH_KM3_S2
 from app.core.exposure.damage import CriticalMass, critical_mass
 from app.core.exposure.faces import Places, criterion_rows
+from app.core.orbit.averaging import Ellipse
 from app.core.spacecraft.attitude import body_axes, face_normals
-from app.core.spacecraft.model import Spacecraft
+from app.core.spacecraft.model import AttitudeLawKind, Spacecraft
 from app.core.streams.sporadic import SPORADIC_DENSITY_KG_M3, SpeedDistribution, gruen_flux_per_m2_s
 
 Floats = npt.NDArray[np.float64]
-POLAR_NODES, AZIMUTH_NODES = 16, 32  # 0.1 % on a face at the horizon of a low orbit
+Nodes = tuple[int, int]  # polar, azimuth
+FINE: Nodes = (16, 32)  # 0.1 % on a face at the horizon of a low orbit
+COARSE: Nodes = (8, 16)  # enough where a dozen phases are averaged
+SAME_SKY_ECCENTRICITY = 0.003  # below it every phase of a nadir-pointing orbit sees the same sky within 0.5 %
+PHASES, ECCENTRIC_PHASES = 12, 24
+ECCENTRIC = 0.1
+
+
+def follows_orbit(spacecraft: Spacecraft) -> bool:
+    """Whether the faces keep their place in the orbit's own axes, so that the date does not matter."""
+    jointed = any(face.joint for face in spacecraft.faces)
+    return spacecraft.attitude.kind is AttitudeLawKind.NADIR and not jointed
+
+
+def orbit_background(
+    spacecraft: Spacecraft, ellipse: Ellipse, sun_km: Floats, speeds: SpeedDistribution
+) -> Floats:
+    """Background hazard rate of each row, (C,), averaged over one orbit in the nominal attitude.
+
+    ``ellipse``: one orbit, vectors (3,); ``sun_km`` (3,) at its date.
+    """
+    if follows_orbit(spacecraft) and ellipse.eccentricity < SAME_SKY_ECCENTRICITY:
+        count, nodes = 1, FINE
+    else:
+        count, nodes = (ECCENTRIC_PHASES if ellipse.eccentricity > ECCENTRIC else PHASES), COARSE
+    r_km, v_km_s, shares = ellipse.points(count)
+    sun = np.repeat(sun_km[:, None], count, axis=1)
+    return background_rates(spacecraft, Places(r_km, v_km_s, sun), shares, speeds, nodes)
 
 
 def background_rates(
-    spacecraft: Spacecraft, places: Places, weights: Floats, speeds: SpeedDistribution
+    spacecraft: Spacecraft,
+    places: Places,
+    weights: Floats,
+    speeds: SpeedDistribution,
+    nodes: Nodes = FINE,
 ) -> Floats:
     """Background hazard rate of each (face, criterion) row, (C,), per m2 and second.
 
@@ -37,12 +69,14 @@ def background_rates(
     total = np.zeros(len(criterion_rows(spacecraft)))
     for phase, weight in enumerate(weights):
         r_km, v_km_s = places.r_km[:, phase], places.v_km_s[:, phase]
-        velocity, density = relative_sky(r_km, v_km_s, speeds)
+        velocity, density = relative_sky(r_km, v_km_s, speeds, nodes)
         total += weight * _on_faces(spacecraft, velocity, density, normals[:, :, phase])
     return total
 
 
-def relative_sky(r_km: Floats, v_km_s: Floats, speeds: SpeedDistribution) -> tuple[Floats, Floats]:
+def relative_sky(
+    r_km: Floats, v_km_s: Floats, speeds: SpeedDistribution, nodes: Nodes = FINE
+) -> tuple[Floats, Floats]:
     """The sporadic sky as a quadrature at one place: relative velocities (3, N), km/s, and densities (N,).
 
     A density is the number per volume, per unit of Gruen flux, that moves so: s/km.
@@ -50,7 +84,7 @@ def relative_sky(r_km: Floats, v_km_s: Floats, speeds: SpeedDistribution) -> tup
     distance = float(np.linalg.norm(r_km))
     v_inf = speeds.v_inf_km_s
     local = np.sqrt(np.square(v_inf) + 2.0 * MU_EARTH_KM3_S2 / distance)
-    direction, solid_angle = _open_sky(_blocked_cosine(distance, v_inf))
+    direction, solid_angle = _open_sky(_blocked_cosine(distance, v_inf), nodes)
     density = (speeds.free_space_share * local / np.square(v_inf) / np.pi)[:, None] * solid_angle
     vertical = _vertical_frame(r_km)
     velocity = np.einsum("ik,knd->ind", vertical, local[:, None] * direction) - v_km_s[:, None, None]
@@ -71,18 +105,19 @@ def _blocked_cosine(distance_km: float, v_inf_km_s: Floats) -> Floats:
     return cosine
 
 
-def _open_sky(blocked_cosine: Floats) -> tuple[Floats, Floats]:
+def _open_sky(blocked_cosine: Floats, nodes: Nodes) -> tuple[Floats, Floats]:
     """Directions of motion (3, K, D), z up, and solid angles (K, D), from straight down to the blocked cone."""
-    x, weight = np.polynomial.legendre.leggauss(POLAR_NODES)
+    polar, around = nodes
+    x, weight = np.polynomial.legendre.leggauss(polar)
     half = 0.5 * (blocked_cosine + 1.0)[:, None]
     up = half * (x + 1.0) - 1.0
-    azimuth = (np.arange(AZIMUTH_NODES) + 0.5) * (2.0 * np.pi / AZIMUTH_NODES)
+    azimuth = (np.arange(around) + 0.5) * (2.0 * np.pi / around)
     level = np.sqrt(1.0 - np.square(up))[:, :, None]
-    shape = (len(blocked_cosine), POLAR_NODES, AZIMUTH_NODES)
+    shape = (len(blocked_cosine), polar, around)
     direction = np.stack(
         [level * np.cos(azimuth), level * np.sin(azimuth), np.broadcast_to(up[:, :, None], shape)]
     )
-    solid_angle = np.broadcast_to((half * weight)[:, :, None] * (2.0 * np.pi / AZIMUTH_NODES), shape)
+    solid_angle = np.broadcast_to((half * weight)[:, :, None] * (2.0 * np.pi / around), shape)
     return direction.reshape(3, shape[0], -1), solid_angle.reshape(shape[0], -1)
 
 

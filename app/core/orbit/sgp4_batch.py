@@ -27,24 +27,28 @@ class Ephemeris:
     error: npt.NDArray[np.uint8]
 
 
-def propagate(elements: Sequence[MeanElements], grid: TimeGrid) -> Ephemeris:
-    """Propagate N element sets to T instants, TEME turned into GCRF with the grid's own matrices.
+def propagate(elements: Sequence[MeanElements], grid: TimeGrid, count: int | None = None) -> Ephemeris:
+    """Propagate N element sets to the grid's first ``count`` instants, T of them (all when None).
 
+    TEME is turned into GCRF with the grid's own matrices, computed once for all satellites.
     A satellite that SGP4 refuses at an instant has NaN there and a code in ``error``; nothing is raised.
     """
     array = SatrecArray([satrec(one) for one in elements])
-    error, r_teme, v_teme = array.sgp4(*grid.utc)
-    return Ephemeris(rotate(grid.teme_to_gcrf, r_teme), rotate(grid.teme_to_gcrf, v_teme), error)
+    day, fraction = grid.utc
+    error, r_teme, v_teme = array.sgp4(day[:count], fraction[:count])
+    turn = grid.teme_to_gcrf[:count]
+    return Ephemeris(rotate(turn, r_teme), rotate(turn, v_teme), error)
 
 
-def first_failure(ephemeris: Ephemeris, satellite: int, grid: TimeGrid) -> str | None:
-    """Say in words why and when a satellite cannot be used on this grid; None when it can."""
-    bad = np.flatnonzero(ephemeris.error[satellite])
+def first_failure(ephemeris: Ephemeris, satellite: int, unix_s: Floats) -> str | None:
+    """Say in words why and when a satellite cannot be used at the first ``len(unix_s)`` instants, else None."""
+    count = len(unix_s)
+    bad = np.flatnonzero(ephemeris.error[satellite, :count])
     if len(bad):
         code = int(ephemeris.error[satellite, bad[0]])
         why = SGP4_ERRORS.get(code, "unknown error")
-        return f"SGP4 error {code} at {format_utc(grid.unix_s[bad[0]])}: {why}"
-    low = np.flatnonzero(np.linalg.norm(ephemeris.r_km[satellite], axis=-1) < BLOCKING_RADIUS_KM)
+        return f"SGP4 error {code} at {format_utc(unix_s[bad[0]])}: {why}"
+    low = np.flatnonzero(np.linalg.norm(ephemeris.r_km[satellite, :count], axis=-1) < BLOCKING_RADIUS_KM)
     if len(low):
-        return f"below {BLOCKING_RADIUS_KM:.0f} km (100 km of air) at {format_utc(grid.unix_s[low[0]])}: decaying"
+        return f"below {BLOCKING_RADIUS_KM:.0f} km (100 km of air) at {format_utc(unix_s[low[0]])}: decaying"
     return None

@@ -1,0 +1,112 @@
+"""One passage of one satellite, judged against the operator's policy."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from enum import StrEnum
+
+import numpy as np
+import numpy.typing as npt
+
+from app.core.advice.factors import Baseline
+from app.core.spacecraft.model import Policy
+
+Floats = npt.NDArray[np.float64]
+
+
+class Level(StrEnum):
+    """What an operator is advised to do."""
+
+    STEADY = "steady"  # nothing to do
+    READY = "ready"  # prepare: staff, freeze manoeuvres
+    SHELTER = "shelter"  # hold a safe attitude
+
+
+@dataclass(frozen=True)
+class Assessment:
+    """Result for one passage; times in UTC POSIX seconds; impacts over onset to end.
+
+    ``row_peak`` (C,), ``satellite_peak`` (L,): largest factors over the whole series.
+    ``impacts``, ``background_impacts`` (L,): stream and background, on the whole satellite.
+    """
+
+    level: Level
+    onset_unix_s: float
+    peak_unix_s: float
+    end_unix_s: float
+    governing_peak: float
+    row_peak: Floats
+    satellite_peak: Floats
+    impacts: Floats
+    background_impacts: Floats
+
+
+def assess(base: Baseline, unix_s: Floats, rates: Floats) -> Assessment:
+    """Judge the hazard rates (C, T) of one stream at instants (T,), T of at least 2.
+
+    A trigger counts when the stream adds at least the policy's floor of expected impacts while the trigger
+    stands at ``ready_at`` or more. The passage lasts from the first to the last instant at which a counting
+    trigger does so; when none does, while the largest trigger stands above half of its peak excess.
+    """
+    policy = base.spacecraft.policy
+    excess = base.trigger_excess(rates)
+    counts = _counting(base, unix_s, rates, excess, policy)
+    governing = excess[counts].max(axis=0) if counts.any() else excess.max(axis=0)
+    top = int(np.argmax(governing))
+    threshold = policy.ready_at - 1.0 if counts.any() else 0.5 * governing[top]
+    onset, end = crossing_span(unix_s, governing, threshold)
+    added = np.tensordot(base.label_weights, rates, axes=1)
+    return Assessment(
+        _level(float(governing[top]), policy) if counts.any() else Level.STEADY,
+        onset,
+        float(unix_s[top]),
+        end,
+        1.0 + float(governing[top]),
+        1.0 + base.row_excess(rates).max(axis=-1),
+        1.0 + base.satellite_excess(rates).max(axis=-1),
+        integral(unix_s, added, onset, end),
+        base.label_background_per_s * (end - onset),
+    )
+
+
+def _counting(
+    base: Baseline, unix_s: Floats, rates: Floats, excess: Floats, policy: Policy
+) -> npt.NDArray[np.bool_]:
+    impacts = base.trigger_impacts_per_s(rates)
+    enough = np.zeros(len(excess), dtype=bool)
+    for index in np.flatnonzero(excess.max(axis=-1) >= policy.ready_at - 1.0):
+        span = crossing_span(unix_s, excess[index], policy.ready_at - 1.0)
+        added = integral(unix_s, impacts[index : index + 1], *span)[0]
+        enough[index] = added >= policy.min_expected_impacts
+    return enough
+
+
+def _level(excess: float, policy: Policy) -> Level:
+    return Level.SHELTER if 1.0 + excess >= policy.shelter_at else Level.READY
+
+
+def crossing_span(unix_s: Floats, values: Floats, threshold: float) -> tuple[float, float]:
+    """First and last instant at which sampled values reach a threshold, interpolated linearly.
+
+    Some sample must reach it. A span that would be a single instant keeps the samples beside it.
+    """
+    above = np.flatnonzero(values >= threshold)
+    first, last = int(above[0]), int(above[-1])
+    start = _crossing(unix_s, values, threshold, first - 1, first) if first > 0 else unix_s[0]
+    end = _crossing(unix_s, values, threshold, last + 1, last) if last + 1 < len(values) else unix_s[-1]
+    return float(start), float(end)
+
+
+def _crossing(unix_s: Floats, values: Floats, threshold: float, outside: int, inside: int) -> float:
+    share = (threshold - values[outside]) / (values[inside] - values[outside])
+    return float(unix_s[outside] + share * (unix_s[inside] - unix_s[outside]))
+
+
+def integral(unix_s: Floats, values: Floats, start_unix_s: float, end_unix_s: float) -> Floats:
+    """Trapezoidal integral over time of values (K, T) between two instants: (K,)."""
+    running = np.zeros(values.shape)
+    steps = 0.5 * (values[:, 1:] + values[:, :-1]) * np.diff(unix_s)
+    np.cumsum(steps, axis=1, out=running[:, 1:])
+    at_end = np.array([np.interp([start_unix_s, end_unix_s], unix_s, row) for row in running])
+    total: Floats = at_end[:, 1] - at_end[:, 0]
+    return total
