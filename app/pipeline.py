@@ -43,7 +43,7 @@ def exposure(inputs: RunInputs, sky: RunSky, satellite: Registered) -> Satellite
 def _marked(inputs: RunInputs, sky: RunSky, satellite: Registered) -> SatelliteResult:
     try:
         found = exposure(inputs, sky, satellite)
-        bodies = [advisory(inputs, satellite, found.plan_end_unix_s, each) for each in found.findings()]
+        bodies = [advisory(inputs, satellite, found.plan.end_unix_s, each) for each in found.findings()]
     except OrbitError as refusal:
         return SatelliteResult(satellite.spacecraft.id, "failed", refusal.detail, ())
     return SatelliteResult(satellite.spacecraft.id, "computed", None, tuple(bodies))
