@@ -50,7 +50,7 @@ def _problem(error: dict[str, Any], nested: Mapping[str, type[BaseModel]]) -> st
         return "is missing"
     if kind == "extra_forbidden":
         model = nested.get(_place(error["loc"][:-1]))
-        names = list(model.model_fields)[:ALLOWED_SHOWN] if model else []
+        names = [f.alias or name for name, f in model.model_fields.items()][:ALLOWED_SHOWN] if model else []
         return f"is no field here; allowed are {', '.join(names)}"
     if kind in ("union_tag_invalid", "union_tag_not_found"):
         tags = [place.rpartition(".")[2] for place in nested if place.startswith(_place(error["loc"]) + ".")]
