@@ -53,7 +53,7 @@ def assess_trial(trial: Trial, law: MassLaw) -> dict[str, Any]:
     streams = StreamSet(trial.streams, law)
     places = Places(trial.r_km, trial.v_km_s, grid.sun_km.T)
     background, notes = _background(trial, places)
-    fluxes = hazard_rates(trial.spacecraft, streams, state.downstream, places) * state.zhr
+    fluxes = hazard_rates(trial.spacecraft, streams, state.downstream, places, state.zhr)
     focused = stream_focusing(streams, state.downstream, trial.r_km)
     arrivals = _Arrivals(trial, streams, state, focused)
     if focused.capped.any():
@@ -134,11 +134,15 @@ class _Arrivals:
 
     def __init__(self, trial: Trial, streams: StreamSet, state: StreamState, focused: Focusing) -> None:
         self.streams, self.state = streams, state
-        outward = unit(trial.r_km)[:, None, :]
-        half = 0.5 * streams.v_inf_km_s
-        slow, fast = half * (state.downstream + outward), half * (state.downstream - outward)
         # Wherever anything arrives the plus branch does, and it is the denser one.
-        self.velocity = relative_velocity(focused.branches[0], focused.q, slow, fast, trial.v_km_s)
+        self.velocity = relative_velocity(
+            focused.branches[0],
+            focused.q,
+            streams.v_inf_km_s,
+            state.downstream,
+            unit(trial.r_km),
+            trial.v_km_s,
+        )
         self.density = sum((branch.density_ratio for branch in focused.branches), np.zeros(focused.q.shape))
         self.min_mass_g = _reference_mass_g(trial.spacecraft, streams)
         self.flux = streams.flux_law.flux_per_m2_s(state.zhr.T, self.min_mass_g).T

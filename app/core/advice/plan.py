@@ -38,9 +38,8 @@ class PlanExposure:
         """Hazard rates (C, S, T), per m2 and second."""
         count = len(self.track.unix_s)
         places = Places(self.track.r_km, self.track.v_km_s, self.plan.grid.sun_km[:count].T)
-        per_zhr = hazard_rates(self.spacecraft, self.plan.streams, self._downstream, places)
-        per_zhr *= self.plan.state.zhr[:, :count]
-        return per_zhr
+        zhr = self.plan.state.zhr[:, :count]
+        return hazard_rates(self.spacecraft, self.plan.streams, self._downstream, places, zhr)
 
     @cached_property
     def margin_and_cap(self) -> tuple[Floats, npt.NDArray[np.bool_]]:

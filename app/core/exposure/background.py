@@ -17,7 +17,7 @@ from app.core.constants import BLOCKING_RADIUS_KM, MU_EARTH_KM3_S2
 from app.core.exposure.damage import CriticalMass, critical_mass
 from app.core.exposure.faces import Places, criterion_rows
 from app.core.orbit.averaging import Ellipse
-from app.core.spacecraft.attitude import body_axes, face_normals
+from app.core.spacecraft.attitude import body_axes, body_normals
 from app.core.spacecraft.model import AttitudeLawKind, Spacecraft
 from app.core.streams.sporadic import SPORADIC_DENSITY_KG_M3, SpeedDistribution, gruen_flux_per_m2_s
 
@@ -65,12 +65,13 @@ def background_rates(
     Source: Gruen et al. 1985 flux; ``speeds`` says how it is shared among speeds.
     """
     axes = body_axes(spacecraft.attitude, places.r_km, places.v_km_s, places.sun_km)
-    normals = face_normals(spacecraft, axes, places.r_km, places.sun_km)
+    normals = body_normals(spacecraft, axes, places.r_km, places.sun_km)
     total = np.zeros(len(criterion_rows(spacecraft)))
     for phase, weight in enumerate(weights):
         r_km, v_km_s = places.r_km[:, phase], places.v_km_s[:, phase]
         velocity, density = relative_sky(r_km, v_km_s, speeds, nodes)
-        total += weight * _on_faces(spacecraft, velocity, density, normals[:, :, phase])
+        here = np.array([n if n.ndim == 1 else n[:, phase] for n in normals])
+        total += weight * _on_faces(spacecraft, axes[:, :, phase] @ velocity, density, here)
     return total
 
 
@@ -131,7 +132,7 @@ def _vertical_frame(r_km: Floats) -> Floats:
 
 
 def _on_faces(spacecraft: Spacecraft, velocity: Floats, density: Floats, normals: Floats) -> Floats:
-    """Hazard of each (face, criterion) row, (C,), for a quadrature of the sky."""
+    """Hazard of each row, (C,), for a quadrature of the sky; ``velocity`` (3, N), ``normals`` (F, 3) in body axes."""
     inward = np.maximum(-(normals @ velocity), 0.0)
     log_speed = 0.5 * np.log(np.einsum("kn,kn->n", velocity, velocity))
     shared: dict[CriticalMass, Floats] = {}

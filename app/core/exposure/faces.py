@@ -11,7 +11,7 @@ import numpy.typing as npt
 
 from app.core.exposure.damage import critical_mass
 from app.core.exposure.focusing import Focusing, focus, relative_velocity
-from app.core.spacecraft.attitude import body_axes, face_normals, unit
+from app.core.spacecraft.attitude import body_axes, body_normals, body_outward, dot, in_axes
 from app.core.spacecraft.model import Criterion, Spacecraft
 from app.core.streams.flux import MassLaw, PowerLaw, power_law
 from app.core.streams.model import Stream
@@ -31,6 +31,18 @@ class Row:
 def criterion_rows(spacecraft: Spacecraft) -> tuple[Row, ...]:
     """All (face, criterion) pairs of a spacecraft, C of them."""
     return tuple(Row(i, c) for i, face in enumerate(spacecraft.faces) for c in face.criteria)
+
+
+@dataclass(frozen=True)
+class Response:
+    """Flux above a criterion's critical mass = ``gain`` n/n_inf speed^``power``, (S, 1) each, per unit ZHR.
+
+    With ``normal_speed`` the speed is the one along the face's normal and ``power`` includes the flux's own.
+    """
+
+    gain: Floats
+    power: Floats
+    normal_speed: bool
 
 
 @dataclass(frozen=True)
@@ -55,9 +67,29 @@ class StreamSet:
         """Flux at infinity above 1 g per unit ZHR, and its exponent, (S,) each."""
         return power_law(self.streams, self.law)
 
+    @cached_property
+    def _responses(self) -> dict[Criterion, Response]:
+        return {}
+
+    def response(self, criterion: Criterion) -> Response:
+        """How these streams act through a criterion; worked out once."""
+        if criterion not in self._responses:
+            self._responses[criterion] = _response(criterion, self)
+        return self._responses[criterion]
+
     def subset(self, indices: Sequence[int]) -> StreamSet:
         """The same, with some of the streams only."""
         return StreamSet(tuple(self.streams[i] for i in indices), self.law)
+
+
+def _response(criterion: Criterion, streams: StreamSet) -> Response:
+    limits = [critical_mass(criterion, s.bulk_density_kg_m3) for s in streams.streams]
+    at_1_km_s = np.array([limit.at_1_km_s_g for limit in limits])
+    slope = np.array([limit.speed_exponent for limit in limits])
+    law = streams.flux_law
+    gain = law.at_1_g * at_1_km_s**-law.exponent
+    power = slope * law.exponent + (1.0 if limits[0].normal_speed else 0.0)
+    return Response(gain[:, None] / streams.v_inf_km_s, power[:, None], limits[0].normal_speed)
 
 
 @dataclass(frozen=True)
@@ -85,87 +117,90 @@ def stream_focusing(streams: StreamSet, downstream: Floats, r_km: Floats) -> Foc
     )
 
 
-def hazard_rates(spacecraft: Spacecraft, streams: StreamSet, downstream: Floats, places: Places) -> Floats:
-    """Hazard rate per unit ZHR, per m2 of face and second, (C, S, T).
+def hazard_rates(
+    spacecraft: Spacecraft,
+    streams: StreamSet,
+    downstream: Floats,
+    places: Places,
+    zhr: Floats | None = None,
+) -> Floats:
+    """Hazard rate per m2 of face and second, (C, S, T), at rates ``zhr`` (S, T), or per unit ZHR without them.
 
-    C runs over ``criterion_rows(spacecraft)``. Multiply by the ZHR of each stream (S, T). The flux on a face
-    is n max(0, -u.normal), u the particle velocity relative to the satellite; particles above the critical
-    mass at that speed and angle count. Zero where the Earth shelters.
+    C runs over ``criterion_rows(spacecraft)``; ``downstream`` (3, S, T) GCRF. The flux on a face is
+    n max(0, -u.normal), u the particle velocity relative to the satellite; particles above the critical mass
+    at that speed and angle count. Zero where the Earth shelters.
     """
     instants = downstream.shape[-1]
-    rates = np.zeros((len(criterion_rows(spacecraft)), len(streams.streams), instants))
+    rates = np.empty((len(criterion_rows(spacecraft)), len(streams.streams), instants))
     for start in range(0, instants, BLOCK):
         part = slice(start, start + BLOCK)
-        _add_block(rates[..., part], spacecraft, streams, downstream[..., part], places.block(part))
+        block = downstream[..., part], places.block(part), None if zhr is None else zhr[..., part]
+        _fill_block(rates[..., part], spacecraft, streams, *block)
     return rates
 
 
-def _add_block(
-    rates: Floats, spacecraft: Spacecraft, streams: StreamSet, downstream: Floats, places: Places
+def _fill_block(
+    rates: Floats,
+    spacecraft: Spacecraft,
+    streams: StreamSet,
+    downstream: Floats,
+    places: Places,
+    zhr: Floats | None,
 ) -> None:
-    focused = stream_focusing(streams, downstream, places.r_km)
     axes = body_axes(spacecraft.attitude, places.r_km, places.v_km_s, places.sun_km)
-    normals = face_normals(spacecraft, axes, places.r_km, places.sun_km)
-    half = 0.5 * streams.v_inf_km_s
-    outward = unit(places.r_km)
-    outward = outward if outward.ndim == 3 else outward[:, None, :]
-    slow, fast = half * (downstream + outward), half * (downstream - outward)
-    for branch in focused.branches:
-        velocity = relative_velocity(branch, focused.q, slow, fast, places.v_km_s)
-        density = branch.density_ratio / streams.v_inf_km_s
-        add_flux(rates, spacecraft, streams, density, velocity, normals)
+    # In body axes a face's normal is three plain numbers (or one, on a box), the same at every instant.
+    normals = body_normals(spacecraft, axes, places.r_km, places.sun_km)
+    flow, satellite = in_axes(axes, downstream), in_axes(axes, places.v_km_s)
+    outward = body_outward(spacecraft.attitude, axes, places.r_km)
+    distance = np.sqrt(np.einsum("k...,k...->...", places.r_km, places.r_km))
+    focused = focus(dot(flow, outward), distance, streams.v_inf_km_s, streams.spread_deg)
+    for number, branch in enumerate(focused.branches):
+        velocity = relative_velocity(branch, focused.q, streams.v_inf_km_s, flow, outward, satellite)
+        density = branch.density_ratio if zhr is None else branch.density_ratio * zhr
+        put_flux(rates, spacecraft, streams, density, velocity, normals, add=number > 0)
 
 
-def add_flux(
+def put_flux(
     rates: Floats,
     spacecraft: Spacecraft,
     streams: StreamSet,
     density: Floats,
     velocity: Floats,
-    normals: Floats,
+    normals: Sequence[Floats],
+    add: bool,
 ) -> None:
-    """Add one branch's hazard to ``rates`` (C, S, T).
+    """Write one branch's hazard into ``rates`` (C, S, T), or add it.
 
-    ``density``: n/n_inf / v_inf, (S, T), s/km. ``velocity``: (3, S, T) km/s. ``normals``: (F, 3, T) or (F, 3, S, T).
+    ``density``: n/n_inf, times ZHR where wanted, (S, T). ``velocity``: (3, S, T) km/s relative to the satellite,
+    in the same axes as ``normals``: one array a face, (3,) or (3, ...) that broadcasts against (S, T).
     """
     weights: dict[Criterion, Floats] = {}
-    speed2 = np.einsum("kst,kst->st", velocity, velocity)
+    speed2 = np.square(velocity[0])
+    speed2 += np.square(velocity[1])
+    speed2 += np.square(velocity[2])
     rows = iter(enumerate(criterion_rows(spacecraft)))
     for face_index, face in enumerate(spacecraft.faces):
         inward = _inward_speed(velocity, normals[face_index])
         for _ in face.criteria:
             index, row = next(rows)
             assert row.face == face_index
-            gain, power, normal_speed = _above_critical(row.criterion, streams)
-            if normal_speed:
-                rates[index] += gain * density * _power(inward, power)
-                continue
-            if row.criterion not in weights:  # faces share the speed-dependent part
-                weights[row.criterion] = gain * density * _power(speed2, 0.5 * power)
-            rates[index] += inward * weights[row.criterion]
+            harm = streams.response(row.criterion)
+            if row.criterion not in weights:  # faces share the part that does not look at the normal
+                weights[row.criterion] = harm.gain * density
+                if not harm.normal_speed:
+                    weights[row.criterion] *= _power(speed2, 0.5 * harm.power)
+            flux = _power(inward, harm.power) if harm.normal_speed else inward
+            if add:
+                rates[index] += flux * weights[row.criterion]
+            else:
+                np.multiply(flux, weights[row.criterion], out=rates[index])
 
 
 def _inward_speed(velocity: Floats, normal: Floats) -> Floats:
-    """max(0, -u.n), (S, T), km/s, for ``normal`` (3, T) or (3, S, T)."""
-    inward = velocity[0] * normal[0]
-    inward += velocity[1] * normal[1]
-    inward += velocity[2] * normal[2]
-    np.negative(inward, out=inward)
-    return np.maximum(inward, 0.0, out=inward)
-
-
-def _above_critical(criterion: Criterion, streams: StreamSet) -> tuple[Floats, Floats, bool]:
-    """Coefficient (S, 1) and exponent (S, 1) of speed in the flux above the critical mass.
-
-    For a criterion that looks at the normal speed the exponent includes the one power of it in the flux.
-    """
-    limits = [critical_mass(criterion, s.bulk_density_kg_m3) for s in streams.streams]
-    at_1_km_s = np.array([limit.at_1_km_s_g for limit in limits])
-    slope = np.array([limit.speed_exponent for limit in limits])
-    law = streams.flux_law
-    gain = law.at_1_g * at_1_km_s**-law.exponent
-    power = slope * law.exponent + (1.0 if limits[0].normal_speed else 0.0)
-    return gain[:, None], power[:, None], limits[0].normal_speed
+    """max(0, -u.n), (S, T), km/s."""
+    inward = dot(velocity, -normal)
+    np.maximum(inward, 0.0, out=inward)
+    return inward
 
 
 def _power(base: Floats, exponent: Floats) -> Floats:

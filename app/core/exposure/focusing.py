@@ -74,43 +74,54 @@ def focus(
     """
     pull = mu_km3_s2 / np.square(v_inf_km_s)
     graze_km = radius_km * np.sqrt(1.0 + 2.0 * pull / radius_km)
-    true_s2 = np.clip(0.5 - 0.5 * cos_theta, 0.0, 1.0)
-    cap = half_sine_cap(spread_deg)
-    s2 = np.maximum(true_s2, np.square(cap))
-    s = np.sqrt(s2)
-    w = np.sqrt(s2 + 2.0 * pull / r_km)
-    q = w / s
-    margin = _shadow_margin(s, w, s2, r_km, graze_km)
-    branches = _arriving(q, s, w, s2, r_km, graze_km, margin)
-    return Focusing(q, branches, margin, true_s2 < np.square(cap))
+    true_s2 = 0.5 - 0.5 * cos_theta
+    cap_s2 = np.square(half_sine_cap(spread_deg))
+    s2 = np.clip(true_s2, cap_s2, 1.0)
+    s, c2 = np.sqrt(s2), 1.0 - s2
+    w = (2.0 * pull) * (1.0 / r_km)
+    w += s2
+    np.sqrt(w, out=w)
+    total, product = s + w, s * w
+    reach = np.sqrt(c2)
+    reach *= r_km
+    margin = np.minimum(c2 - product, 1.0 - total * reach * (1.0 / graze_km))
+    branches: tuple[Branch, ...] = (Branch(1.0, _density_ratio(total, product, margin <= 0.0)),)
+    # |b| of the minus branch is largest on the axis, sqrt(2 a r). Where even that is below grazing, as in every
+    # low orbit, the branch is dark, and leaving it out halves the work that follows.
+    if np.any(2.0 * pull * np.max(r_km) >= np.square(graze_km)):
+        visible = reach * (w - s) >= graze_km
+        if visible.any():
+            branches = *branches, Branch(-1.0, _density_ratio(w - s, product, visible))
+    return Focusing(w / s, branches, margin, true_s2 < cap_s2)
 
 
-def _shadow_margin(s: Floats, w: Floats, s2: Floats, r_km: Floats, graze_km: Floats) -> Floats:
-    """Positive where the plus branch is stopped: outward motion and an impact parameter below grazing."""
-    c2 = 1.0 - s2
-    outward = c2 - s * w
-    miss = 1.0 - r_km * np.sqrt(c2) * (s + w) / graze_km
-    return np.minimum(outward, miss)
+def _density_ratio(sum_or_difference: Floats, product: Floats, arrives: npt.NDArray[np.bool_]) -> Floats:
+    """(q +- 1)^2 / (4 q) with q = w/s, from w +- s and w s; zero where nothing arrives."""
+    density = np.square(sum_or_difference)
+    density /= product
+    density *= 0.25 * arrives
+    return density
 
 
-def _arriving(
-    q: Floats, s: Floats, w: Floats, s2: Floats, r_km: Floats, graze_km: Floats, margin: Floats
-) -> tuple[Branch, ...]:
-    over_4q = 0.25 / q
-    plus = Branch(1.0, np.where(margin > 0.0, 0.0, np.square(q + 1.0) * over_4q))
-    impact_minus_km = r_km * np.sqrt(1.0 - s2) * (w - s)
-    visible = impact_minus_km >= graze_km
-    if not visible.any():  # always so in low orbits, where it halves the work that follows
-        return (plus,)
-    return plus, Branch(-1.0, np.where(visible, np.square(q - 1.0) * over_4q, 0.0))
+def relative_velocity(
+    branch: Branch,
+    q: Floats,
+    v_inf_km_s: Floats,
+    downstream: Floats,
+    outward: Floats,
+    v_km_s: Floats,
+) -> Floats:
+    """Particle velocity relative to the satellite, (3, S, T), km/s, all vectors in the same axes.
 
-
-def relative_velocity(branch: Branch, q: Floats, slow: Floats, fast: Floats, v_km_s: Floats) -> Floats:
-    """Particle velocity relative to the satellite, (3, S, T), km/s.
-
-    ``slow`` = v_inf/2 (w + r/|r|) and ``fast`` = v_inf/2 (w - r/|r|), each (3, S, T): the branch moves
-    with slow + q fast or slow - q fast. ``v_km_s``: the satellite's velocity, (3, T) or (3, S, T).
+    ``downstream`` (3, S, T) and ``outward`` = r/|r| are unit vectors. ``outward`` and the satellite's velocity
+    ``v_km_s`` are (3,), (3, T) or (3, S, T). ``q`` (S, T), ``v_inf_km_s`` (S, 1).
     """
-    satellite = v_km_s if v_km_s.ndim == slow.ndim else v_km_s[:, None, :]
-    velocity: Floats = slow + (branch.sign * q) * fast - satellite
+    along = (0.5 * v_inf_km_s) * (1.0 + branch.sign * q)
+    up = v_inf_km_s - along
+    velocity = np.empty(downstream.shape)
+    for axis in range(3):
+        np.multiply(along, downstream[axis], out=velocity[axis])
+        if np.any(outward[axis]):
+            velocity[axis] += up * outward[axis]
+        velocity[axis] -= v_km_s[axis]
     return velocity

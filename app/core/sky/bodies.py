@@ -21,12 +21,13 @@ def sun_km(tdb: SplitDate) -> Floats:
     return position
 
 
-def solar_longitude_deg(tdb: SplitDate) -> Floats:
+def ecliptic_longitude_deg(sun_km: Floats) -> Floats:
     """Geocentric geometric ecliptic longitude of the Sun (T,), degrees 0-360, equinox J2000.
 
-    Light time and aberration are left out, as the stream lists do within 0.006 degrees (8 minutes).
+    ``sun_km`` (T, 3) GCRF. Light time and aberration are left out, as the stream lists do within 0.006 degrees
+    (8 minutes).
     """
-    ecliptic = sun_km(tdb) @ _ecliptic_from_gcrf().T
+    ecliptic = sun_km @ _ecliptic_from_gcrf().T
     longitude: Floats = np.degrees(np.arctan2(ecliptic[..., 1], ecliptic[..., 0])) % 360.0
     return longitude
 

@@ -20,9 +20,9 @@ def teme_to_gcrf(utc: SplitDate, tt: SplitDate) -> Floats:
     (Vallado et al. 2006, AIAA 2006-6753, appendix C). Both sidereal times turn at the same rate, so UT1
     cancels to 1e-9 rad and UTC stands in for it. Celestial pole offsets (under 1 mas, 3 cm) are neglected.
     """
-    apparent = erfa.gst06a(*utc, *tt)
-    mean = erfa.gmst82(*utc)
     true_of_date_from_gcrf = erfa.pnm06a(*tt)
+    apparent = erfa.gst06(*utc, *tt, true_of_date_from_gcrf)
+    mean = erfa.gmst82(*utc)
     true_of_date_from_teme = _turn_about_pole(mean - apparent)
     rotation: Floats = np.swapaxes(true_of_date_from_gcrf, -1, -2) @ true_of_date_from_teme
     return rotation

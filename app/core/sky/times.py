@@ -61,7 +61,7 @@ class TimeGrid:
     @cached_property
     def solar_longitude_deg(self) -> Floats:
         """Solar longitude (T,), degrees 0-360, equinox J2000."""
-        return bodies.solar_longitude_deg(self.tt)
+        return bodies.ecliptic_longitude_deg(self.sun_km)
 
     def __len__(self) -> int:
         return len(self.unix_s)
