@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from datetime import UTC, datetime
 
@@ -36,23 +36,29 @@ class Passage:
 
 def find_passages(streams: Sequence[Stream], from_unix_s: float, to_unix_s: float) -> list[Passage]:
     """Passages that touch an interval, by peak time. The year in the name is that of the peak."""
+    if not streams:
+        return []
     first = datetime.fromtimestamp(from_unix_s, UTC).year - 1
     years = range(first, datetime.fromtimestamp(to_unix_s, UTC).year + 2)
-    found = [_passage(i, s, year) for i, s in enumerate(streams) for year in years]
+    found = [p for year in years for p in _passages(streams, year)]
     kept = [p for p in found if p.end_unix_s > from_unix_s and p.start_unix_s < to_unix_s]
     return sorted(kept, key=lambda p: (p.peak_unix_s, p.code))
 
 
-def _passage(index: int, stream: Stream, year: int) -> Passage:
+def _passages(streams: Sequence[Stream], year: int) -> Iterator[Passage]:
+    """One passage of each stream, its peak within a year of the given one's first of January."""
     new_year = datetime(year, 1, 1, tzinfo=UTC).timestamp()
+    peak_deg = np.array([s.peak_deg for s in streams])
+    rise_deg, fall_deg = np.array([activity_sides_deg(s) for s in streams]).T
     # On 1 January the Sun stands near 280 degrees (J2000).
-    guess = new_year + ((stream.peak_deg - 280.0) % 360.0) / MEAN_SOLAR_MOTION_DEG_PER_S
-    peak = float(time_of_solar_longitude(stream.peak_deg, guess))
-    rise_deg, fall_deg = activity_sides_deg(stream)
-    start = float(time_of_solar_longitude(stream.peak_deg - rise_deg, peak - rise_deg * DAY_S))
-    end = float(time_of_solar_longitude(stream.peak_deg + fall_deg, peak + fall_deg * DAY_S))
-    name_year = datetime.fromtimestamp(peak, UTC).year
-    return Passage(index, stream.code, f"{stream.code}-{name_year}", start, peak, end)
+    guess = new_year + ((peak_deg - 280.0) % 360.0) / MEAN_SOLAR_MOTION_DEG_PER_S
+    peak = time_of_solar_longitude(peak_deg, guess)
+    start = time_of_solar_longitude(peak_deg - rise_deg, peak - rise_deg * DAY_S)
+    end = time_of_solar_longitude(peak_deg + fall_deg, peak + fall_deg * DAY_S)
+    for index, stream in enumerate(streams):
+        name = f"{stream.code}-{datetime.fromtimestamp(peak[index], UTC).year}"
+        times = float(start[index]), float(peak[index]), float(end[index])
+        yield Passage(index, stream.code, name, *times)
 
 
 def activity_sides_deg(stream: Stream) -> tuple[float, float]:
