@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import time
 from collections.abc import AsyncIterator, Callable
-from contextlib import asynccontextmanager
+from contextlib import AbstractAsyncContextManager, asynccontextmanager
 
 import anyio.to_thread
 from fastapi import Depends, FastAPI, Request
@@ -94,7 +94,9 @@ async def _on_not_modified(_request: Request, found: Exception) -> Response:
     return not_modified(found.tag)
 
 
-def _lifespan(context: Context, worker: QueueWorker | None, close: bool) -> Callable[..., object]:
+def _lifespan(
+    context: Context, worker: QueueWorker | None, close: bool
+) -> Callable[[FastAPI], AbstractAsyncContextManager[None]]:
     @asynccontextmanager
     async def lifespan(_app: FastAPI) -> AsyncIterator[None]:
         # A thread may hold one connection; more threads than connections would only wait for one.

@@ -29,7 +29,7 @@ BODY_ERRORS = (413, 415, 422)
 def reading(example: Any, *errors: int, paged: bool = False) -> dict[int | str, dict[str, Any]]:
     """Describe the answers of a GET under ``/v1``."""
     headers = {"ETag": TAG, **({"Link": LINK} if paged else {})}
-    found = {
+    found: dict[int | str, dict[str, Any]] = {
         200: {"content": {"application/json": {"example": example}}, "headers": headers},
         304: {"description": "What If-None-Match names is current.", "headers": {"ETag": TAG}},
     }
