@@ -1,4 +1,8 @@
-"""How a route describes itself in the OpenAPI document: its answers, its problems, its request body."""
+"""How a route describes itself in the OpenAPI document: its answers, its problems, its request body.
+
+Examples are given by name. The framework drops every null of a description, also of an example, where null
+means something; so ``openapi`` puts the examples in afterwards.
+"""
 
 from __future__ import annotations
 
@@ -8,6 +12,7 @@ from app.api.problems import KINDS, MEDIA_TYPE, NOT_READY, BodyTooLargeError, Ki
 from app.api.problems import UnsupportedMediaTypeError as WrongMediaType
 from app.errors import ConflictError, FieldError, NotFoundError
 
+EXAMPLE = "x-example"  # the name of a sample, until ``openapi`` puts the sample in its place
 TEMPLATE = "#/components/schemas/{model}"
 SAMPLES: dict[int, tuple[Kind, str, dict[str, str]]] = {
     404: (KINDS[NotFoundError], "there is no satellite 'kestrel-9'", {}),
@@ -26,19 +31,21 @@ LINK = {
 BODY_ERRORS = (413, 415, 422)
 
 
-def reading(example: Any, *errors: int, paged: bool = False) -> dict[int | str, dict[str, Any]]:
+def reading(example: str, *errors: int, paged: bool = False) -> dict[int | str, dict[str, Any]]:
     """Describe the answers of a GET under ``/v1``."""
     headers = {"ETag": TAG, **({"Link": LINK} if paged else {})}
     found: dict[int | str, dict[str, Any]] = {
-        200: {"content": {"application/json": {"example": example}}, "headers": headers},
+        200: {"content": sample(example), "headers": headers},
         304: {"description": "What If-None-Match names is current.", "headers": {"ETag": TAG}},
     }
     return {**found, **problems(*errors, 422)}
 
 
-def writing(example: Any, status: int, *errors: int, text: str = "Done.") -> dict[int | str, dict[str, Any]]:
+def writing(
+    example: str | None, status: int, *errors: int, text: str = "Done."
+) -> dict[int | str, dict[str, Any]]:
     """Describe the answers of a call that changes or computes something."""
-    content = {"content": {"application/json": {"example": example}}} if example is not None else {}
+    content = {"content": sample(example)} if example is not None else {}
     return {status: {"description": text, **content}, **problems(*errors)}
 
 
@@ -48,10 +55,15 @@ def problems(*statuses: int) -> dict[int | str, dict[str, Any]]:
     return {**found, "default": {"description": "Any other problem.", "content": {MEDIA_TYPE: _schema()}}}
 
 
-def body(schema: str, example: Any, required: bool = True) -> dict[str, Any]:
+def body(schema: str, example: str, required: bool = True) -> dict[str, Any]:
     """Describe a JSON request body by the name of its schema."""
-    content = {"application/json": {"schema": {"$ref": TEMPLATE.format(model=schema)}, "example": example}}
-    return {"requestBody": {"required": required, "content": content}}
+    reference = {"schema": {"$ref": TEMPLATE.format(model=schema)}, EXAMPLE: example}
+    return {"requestBody": {"required": required, "content": {"application/json": reference}}}
+
+
+def sample(example: str) -> dict[str, Any]:
+    """Describe a JSON body by its example alone; the framework adds the schema."""
+    return {"application/json": {EXAMPLE: example}}
 
 
 def _problem(kind: Kind, detail: str, more: dict[str, str]) -> dict[str, Any]:

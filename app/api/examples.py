@@ -267,3 +267,24 @@ OMM_XML = (
     f"{_tags(tuple(n for n in OMM if n not in (*_HEAD, *_METADATA, *_TLE)))}</meanElements>"
     f"<tleParameters>{_tags(_TLE)}</tleParameters></data></segment></body></omm>"
 )
+
+NAMED: dict[str, Any] = {
+    "satellite": SATELLITE,
+    "satellites": page(SATELLITE),
+    "omm": OMM,
+    "orbit": ORBIT,
+    "enhancement": ENHANCEMENT,
+    "windows": WINDOWS,
+    "advisory": ADVISORY,
+    "advisories": page(ADVISORY),
+    "stream": STREAM,
+    "streams": page(STREAM),
+    "run request": RUN_REQUEST,
+    "queued run": QUEUED,
+    "run": {**RUN, "satellites": page(*RUN_SATELLITES)},
+    "runs": page(RUN),
+    "trial request": TRIAL_REQUEST,
+    "trial": TRIAL,
+    "alive": {"status": "alive"},
+    "ready": READY,
+}

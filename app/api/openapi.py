@@ -2,13 +2,15 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from typing import Any
 
 from fastapi import FastAPI
 from fastapi.openapi.utils import get_openapi
 from pydantic.json_schema import models_json_schema
 
-from app.api.docs import TEMPLATE
+from app.api.docs import EXAMPLE, TEMPLATE
+from app.api.examples import NAMED
 from app.api.schemas import Omm, Problem, RunRequest
 from app.core.advice.advisory import CAUTION
 from app.formats.satellite import SatelliteIn
@@ -36,4 +38,14 @@ def document(app: FastAPI) -> dict[str, Any]:
     schemas = made.setdefault("components", {}).setdefault("schemas", {})
     for name, schema in shapes["$defs"].items():
         schemas.setdefault(name, schema)
+    for part in _contents(made):
+        if EXAMPLE in part:
+            part["example"] = NAMED[part.pop(EXAMPLE)]
     return made
+
+
+def _contents(made: dict[str, Any]) -> Iterator[dict[str, Any]]:
+    """Every described body, sent or answered."""
+    for call in [call for calls in made["paths"].values() for call in calls.values()]:
+        for described in (call.get("requestBody", {}), *call["responses"].values()):
+            yield from described.get("content", {}).values()

@@ -9,7 +9,7 @@ from fastapi import APIRouter, Path, Query
 from pydantic import Field
 from starlette.responses import Response
 
-from app.api import docs, examples
+from app.api import docs
 from app.api.caching import reply
 from app.api.deps import AskedNow, existing_id
 from app.api.paging import Page, Pager
@@ -46,7 +46,7 @@ class AdvisoryQuery(Page):
 @router.get(
     "",
     response_model=ItemsPage[Advisory],
-    responses=docs.reading(examples.page(examples.ADVISORY), paged=True),
+    responses=docs.reading("advisories", paged=True),
 )
 def read_advisories(asked: AskedNow, query: Annotated[AdvisoryQuery, Query()]) -> Response:
     """List the latest revision of each advisory, in the order in which they changed."""
@@ -59,7 +59,7 @@ def read_advisories(asked: AskedNow, query: Annotated[AdvisoryQuery, Query()]) -
     return reply(shown, tag, headers)
 
 
-@router.get("/{advisory_id}", response_model=Advisory, responses=docs.reading(examples.ADVISORY, 404))
+@router.get("/{advisory_id}", response_model=Advisory, responses=docs.reading("advisory", 404))
 def read_advisory(asked: AskedNow, advisory_id: AdvisoryId) -> Response:
     """Return an advisory's latest revision."""
     with asked.reading() as (session, tag):
@@ -70,7 +70,7 @@ def read_advisory(asked: AskedNow, advisory_id: AdvisoryId) -> Response:
 @router.get(
     "/{advisory_id}/revisions",
     response_model=ItemsPage[Advisory],
-    responses=docs.reading(examples.page(examples.ADVISORY), 404, paged=True),
+    responses=docs.reading("advisories", 404, paged=True),
 )
 def read_revisions(asked: AskedNow, advisory_id: AdvisoryId, page: Annotated[Page, Query()]) -> Response:
     """List an advisory's revisions, the first one first."""

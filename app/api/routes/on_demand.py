@@ -9,7 +9,7 @@ from fastapi import APIRouter, Query
 from pydantic import Field
 from starlette.responses import Response
 
-from app.api import docs, examples, series
+from app.api import docs, series
 from app.api.caching import reply
 from app.api.deps import SOFTWARE, Asked, AskedNow, existing_id
 from app.api.problems import NotOfferedError
@@ -54,7 +54,7 @@ class Subject:
 @router.get(
     "/{satellite_id}/enhancement",
     response_model=Enhancement,
-    responses=docs.reading(examples.ENHANCEMENT, 404, 409),
+    responses=docs.reading("enhancement", 404, 409),
 )
 def read_enhancement(
     asked: AskedNow, satellite_id: SatelliteId, query: Annotated[EnhancementQuery, Query()]
@@ -72,9 +72,7 @@ def read_enhancement(
     return reply({"satellite": satellite_id, **shown, **_origin(asked, subject)}, tag)
 
 
-@router.get(
-    "/{satellite_id}/windows", response_model=Windows, responses=docs.reading(examples.WINDOWS, 404, 409)
-)
+@router.get("/{satellite_id}/windows", response_model=Windows, responses=docs.reading("windows", 404, 409))
 def read_windows(
     asked: AskedNow, satellite_id: SatelliteId, query: Annotated[WindowsQuery, Query()]
 ) -> Response:

@@ -32,7 +32,7 @@ BODY = {
         "required": True,
         "description": "Exactly one element set. text/plain is looked at: OMM in KVN, or a two-line element set.",
         "content": {
-            "application/json": {"schema": OMM_SCHEMA, "example": examples.OMM},
+            "application/json": {"schema": OMM_SCHEMA, docs.EXAMPLE: "omm"},
             "application/xml": {"schema": TEXT_SCHEMA, "example": examples.OMM_XML},
             "text/csv": {"schema": TEXT_SCHEMA, "example": examples.OMM_CSV},
             "text/plain": {"schema": TEXT_SCHEMA, "example": examples.OMM_KVN},
@@ -42,7 +42,7 @@ BODY = {
 TYPE_PLACE = "content type"  # where ``read_orbits`` refuses a media type
 
 
-@router.get("/{satellite_id}/orbit", response_model=OrbitOut, responses=docs.reading(examples.ORBIT, 404))
+@router.get("/{satellite_id}/orbit", response_model=OrbitOut, responses=docs.reading("orbit", 404))
 def read_orbit(asked: AskedNow, satellite_id: SatelliteId) -> Response:
     """Return the orbit in use as an OMM, with its epoch, and its age at the last full hour."""
     with asked.context.store.read() as session:
@@ -54,9 +54,7 @@ def read_orbit(asked: AskedNow, satellite_id: SatelliteId) -> Response:
 @router.put(
     "/{satellite_id}/orbit",
     response_model=OrbitOut,
-    responses=docs.writing(
-        examples.ORBIT, 200, 404, 409, 412, *docs.BODY_ERRORS, text="This orbit is in use."
-    ),
+    responses=docs.writing("orbit", 200, 404, 409, 412, *docs.BODY_ERRORS, text="This orbit is in use."),
     openapi_extra=BODY,
 )
 def write_orbit(asked: AskedNow, satellite_id: SatelliteId, data: RawBody) -> Response:

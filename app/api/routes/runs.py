@@ -9,7 +9,7 @@ from fastapi import APIRouter, Path, Query
 from pydantic import Field
 from starlette.responses import Response
 
-from app.api import docs, examples
+from app.api import docs
 from app.api.bodies import OptionalJsonBody
 from app.api.caching import json_response, reply
 from app.api.deps import AskedNow, existing_id
@@ -33,7 +33,6 @@ from app.store.runs import (
 router = APIRouter(prefix="/v1/runs", tags=["runs"])
 RunId = Annotated[str, Path(description="The run's id.", examples=["run-20260810T000000Z-1f2e3d4c"])]
 COUNTS = ("satellites_total", "satellites_done", "computed", "failed", "revisions_new")
-DETAIL = {**examples.RUN, "satellites": examples.page(*examples.RUN_SATELLITES)}
 
 
 class RunQuery(Page):
@@ -49,13 +48,13 @@ class RunQuery(Page):
     status_code=202,
     response_model=RunOut,
     responses=docs.writing(
-        examples.QUEUED,
+        "queued run",
         202,
         409,
         *docs.BODY_ERRORS,
         text="Queued; follow Location to see what becomes of it.",
     ),
-    openapi_extra=docs.body("RunRequest", examples.RUN_REQUEST, required=False),
+    openapi_extra=docs.body("RunRequest", "run request", required=False),
 )
 def request_run(asked: AskedNow, document: OptionalJsonBody) -> Response:
     """Ask for a run. Without a body: all satellites, as of now."""
@@ -74,9 +73,7 @@ def request_run(asked: AskedNow, document: OptionalJsonBody) -> Response:
     return json_response(_shown(record), 202, headers)
 
 
-@router.get(
-    "", response_model=ItemsPage[RunOut], responses=docs.reading(examples.page(examples.RUN), paged=True)
-)
+@router.get("", response_model=ItemsPage[RunOut], responses=docs.reading("runs", paged=True))
 def read_runs(asked: AskedNow, page: Annotated[Page, Query()]) -> Response:
     """List the runs, the one asked for last first."""
     pager = Pager(asked.request, page, (int,))
@@ -87,7 +84,7 @@ def read_runs(asked: AskedNow, page: Annotated[Page, Query()]) -> Response:
     return reply(shown, tag, headers)
 
 
-@router.get("/{run_id}", response_model=RunDetail, responses=docs.reading(DETAIL, 404, paged=True))
+@router.get("/{run_id}", response_model=RunDetail, responses=docs.reading("run", 404, paged=True))
 def read_run(asked: AskedNow, run_id: RunId, query: Annotated[RunQuery, Query()]) -> Response:
     """Return a run with a page of its satellites: what became of each, and why."""
     pager = Pager(asked.request, query, (str,))

@@ -9,7 +9,7 @@ from fastapi import APIRouter, Path, Query
 from sqlalchemy.orm import Session
 from starlette.responses import Response
 
-from app.api import docs, examples
+from app.api import docs
 from app.api.bodies import JsonBody
 from app.api.caching import check_preconditions, json_response, reply
 from app.api.deps import Asked, AskedNow, existing_id
@@ -27,7 +27,7 @@ SatelliteId = Annotated[str, Path(description="The satellite's id.", examples=["
 @router.get(
     "",
     response_model=ItemsPage[SatelliteIn],
-    responses=docs.reading(examples.page(examples.SATELLITE), paged=True),
+    responses=docs.reading("satellites", paged=True),
 )
 def read_satellites(asked: AskedNow, page: Annotated[Page, Query()]) -> Response:
     """List the registered satellites by id."""
@@ -39,7 +39,7 @@ def read_satellites(asked: AskedNow, page: Annotated[Page, Query()]) -> Response
     return reply(shown, tag, headers)
 
 
-@router.get("/{satellite_id}", response_model=SatelliteIn, responses=docs.reading(examples.SATELLITE, 404))
+@router.get("/{satellite_id}", response_model=SatelliteIn, responses=docs.reading("satellite", 404))
 def read_satellite(asked: AskedNow, satellite_id: SatelliteId) -> Response:
     """Return a satellite as ``PUT`` takes it, every default spelt out."""
     with asked.context.store.read() as session:
@@ -51,10 +51,10 @@ def read_satellite(asked: AskedNow, satellite_id: SatelliteId) -> Response:
     "/{satellite_id}",
     response_model=SatelliteIn,
     responses={
-        **docs.writing(examples.SATELLITE, 200, 412, *docs.BODY_ERRORS, text="Replaced."),
-        **docs.writing(examples.SATELLITE, 201, 409, 412, *docs.BODY_ERRORS, text="Registered."),
+        201: {"description": "Registered.", "model": SatelliteIn, "content": docs.sample("satellite")},
+        **docs.writing("satellite", 200, 409, 412, *docs.BODY_ERRORS, text="Replaced."),
     },
-    openapi_extra=docs.body("SatelliteIn", examples.SATELLITE),
+    openapi_extra=docs.body("SatelliteIn", "satellite"),
 )
 def write_satellite(asked: AskedNow, satellite_id: SatelliteId, document: JsonBody) -> Response:
     """Register or replace a satellite. If-Match and If-None-Match: * are honoured."""

@@ -8,7 +8,7 @@ from typing import Annotated, Any
 from fastapi import APIRouter, Path, Query
 from starlette.responses import Response
 
-from app.api import docs, examples
+from app.api import docs
 from app.api.caching import reply
 from app.api.deps import AskedNow
 from app.api.paging import Page, Pager
@@ -24,7 +24,7 @@ StreamCode = Annotated[str, Path(description="The stream's code.", examples=["PE
 @router.get(
     "",
     response_model=ItemsPage[StreamOut],
-    responses=docs.reading(examples.page(examples.STREAM), paged=True),
+    responses=docs.reading("streams", paged=True),
 )
 def read_streams(asked: AskedNow, page: Annotated[Page, Query()]) -> Response:
     """List the catalogued streams by code, those that are off included."""
@@ -37,7 +37,7 @@ def read_streams(asked: AskedNow, page: Annotated[Page, Query()]) -> Response:
     return reply(shown, tag, headers)
 
 
-@router.get("/{code}", response_model=StreamOut, responses=docs.reading(examples.STREAM, 404))
+@router.get("/{code}", response_model=StreamOut, responses=docs.reading("stream", 404))
 def read_stream(asked: AskedNow, code: StreamCode) -> Response:
     """Return one stream."""
     catalogue = asked.context.catalogue

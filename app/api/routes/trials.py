@@ -5,7 +5,7 @@ from __future__ import annotations
 from fastapi import APIRouter
 from starlette.responses import Response
 
-from app.api import docs, examples
+from app.api import docs
 from app.api.bodies import JsonBody
 from app.api.caching import json_response
 from app.api.deps import AskedNow
@@ -19,8 +19,8 @@ router = APIRouter(prefix="/v1/trials", tags=["trials"])
 @router.post(
     "",
     response_model=TrialOut,
-    responses=docs.writing(examples.TRIAL, 200, *docs.BODY_ERRORS, text="The assessment."),
-    openapi_extra=docs.body("TrialIn", examples.TRIAL_REQUEST),
+    responses=docs.writing("trial", 200, *docs.BODY_ERRORS, text="The assessment."),
+    openapi_extra=docs.body("TrialIn", "trial request"),
 )
 def try_attitude(asked: AskedNow, document: JsonBody) -> Response:
     """Assess an attitude, faces and streams of your own at given states, or along an orbit."""
