@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Mapping
 from dataclasses import dataclass, field
+from typing import Any
 
 from app.core.constants import ESCAPE_SPEED2_KM2_S2
 from app.errors import FieldError
@@ -92,7 +93,7 @@ class CatalogueEntry:
     enabled: bool
     why_off: str | None
     stream: Stream | None
-    values: tuple[Mapping[str, Mapping[str, object]], ...]
+    values: tuple[Mapping[str, Mapping[str, Any]], ...]
     notes: tuple[str, ...] = ()
 
 
