@@ -7,6 +7,7 @@ from dataclasses import dataclass
 from functools import partial
 
 from app import __version__
+from app.catalogue_file import load_catalogue
 from app.jobs.chunk import Compute, chunk_size, compute_chunk
 from app.jobs.executor import executor, in_process
 from app.jobs.heartbeat import Heartbeat
@@ -91,6 +92,7 @@ def run_inputs(settings: Settings, run: RunRecord) -> RunInputs:
         mass_law=settings.mass_law,
         run_id=run.id,
         software=f"stonechat {__version__}",
+        catalogue=load_catalogue(),
     )
 
 
