@@ -61,19 +61,17 @@ def critical_mass(criterion: Criterion, density_kg_m3: float) -> CriticalMass:
 
 def impact_charge_c(mass_g: float, speed_km_s: float) -> float:
     """Impact plasma charge in coulomb (McBride & McDonnell 1999)."""
-    size = (mass_g / CHARGE_MASS_G) ** (CHARGE_MASS_EXPONENT - 1.0)
-    return CHARGE_COEFFICIENT * mass_g * size * (speed_km_s / CHARGE_SPEED_KM_S) ** CHARGE_SPEED_EXPONENT
+    size: float = (mass_g / CHARGE_MASS_G) ** (CHARGE_MASS_EXPONENT - 1.0)
+    plasma: float = (speed_km_s / CHARGE_SPEED_KM_S) ** CHARGE_SPEED_EXPONENT
+    return CHARGE_COEFFICIENT * mass_g * size * plasma
 
 
 def crater_depth_cm(diameter_cm: float, density_g_cm3: float, normal_km_s: float, wall: Material) -> float:
     """Crater depth in a thick wall (Cour-Palais, IADC form)."""
-    return (
-        CRATER_COEFFICIENT
-        * diameter_cm**CRATER_DIAMETER_EXPONENT
-        * wall.brinell**-0.25
-        * _density_term(density_g_cm3, wall)
-        * (normal_km_s / wall.sound_speed_km_s) ** CRATER_SPEED_EXPONENT
-    )
+    size: float = diameter_cm**CRATER_DIAMETER_EXPONENT
+    softness: float = wall.brinell**-0.25
+    speed: float = (normal_km_s / wall.sound_speed_km_s) ** CRATER_SPEED_EXPONENT
+    return CRATER_COEFFICIENT * size * softness * _density_term(density_g_cm3, wall) * speed
 
 
 def material(name: str | None) -> Material:

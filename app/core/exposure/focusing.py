@@ -57,7 +57,8 @@ def half_sine_cap(spread_deg: npt.ArrayLike) -> Floats:
     branches together give sqrt(2a/r)/theta; they are equal at theta = sigma sqrt(2/pi).
     """
     theta = np.radians(spread_deg) * np.sqrt(2.0 / np.pi)
-    return np.maximum(np.sin(theta / 2.0), SMALLEST_HALF_SINE)
+    smallest: Floats = np.maximum(np.sin(theta / 2.0), SMALLEST_HALF_SINE)
+    return smallest
 
 
 def focus(

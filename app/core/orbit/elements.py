@@ -11,6 +11,10 @@ SECONDS_PER_DAY = 86400.0
 EARTH_RADIUS_KM = 6378.135  # WGS-72, the radius SGP4 elements are defined with (Vallado et al. 2006)
 MU_WGS72_KM3_S2 = 398600.8  # WGS-72
 J2_WGS72 = 0.001082616  # WGS-72
+FINITE = (
+    *("epoch_jd", "epoch_fraction", "raan_deg", "arg_perigee_deg", "mean_anomaly_deg"),
+    *("mean_motion_dot_rev_per_day2", "mean_motion_ddot_rev_per_day3"),
+)
 
 
 @dataclass(frozen=True)
@@ -46,7 +50,7 @@ class MeanElements:
             value = getattr(self, name)
             if not low <= value <= high:
                 raise FieldError(name, f"is {value!r}; it must lie between {low} and {high}")
-        for name in ("epoch_jd", "epoch_fraction", "raan_deg", "arg_perigee_deg", "mean_anomaly_deg"):
+        for name in FINITE:
             if not math.isfinite(getattr(self, name)):
                 raise FieldError(name, "must be a finite number")
 

@@ -70,7 +70,7 @@ class TimeGrid:
 def regular_grid(start_unix_s: float, stop_unix_s: float, step_s: float) -> TimeGrid:
     """Instants from start to stop inclusive, ``step_s`` apart; the last one is at or before stop."""
     count = int(np.floor((stop_unix_s - start_unix_s) / step_s + 1e-9)) + 1
-    return TimeGrid(start_unix_s + step_s * np.arange(max(count, 0)))
+    return TimeGrid(start_unix_s + step_s * np.arange(max(count, 0), dtype=np.float64))
 
 
 def parse_utc(text: str, field: str = "time") -> float:

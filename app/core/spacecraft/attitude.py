@@ -116,8 +116,9 @@ def _track(joint: Joint, normal: Floats, sun_body: Floats) -> Floats:
     cosine, sine = np.where(resting, 1.0, toward / length), np.where(resting, 0.0, across / length)
     along, on_zero, on_third = axis @ normal, zero @ normal, third @ normal
     shape = (3, *([1] * cosine.ndim))
-    return (
+    turned: Floats = (
         axis.reshape(shape) * along
         + zero.reshape(shape) * (on_zero * cosine - on_third * sine)
         + third.reshape(shape) * (on_zero * sine + on_third * cosine)
     )
+    return turned

@@ -13,6 +13,7 @@ from app.errors import FieldError
 
 Vector = tuple[float, float, float]
 Quaternion = tuple[float, float, float, float]
+UNIT_TOLERANCE = 1e-12  # a length this close to 1 is rounding, not a vector to normalise
 
 
 class CriterionKind(StrEnum):
@@ -121,7 +122,7 @@ class AttitudeLaw:
             norm = math.sqrt(sum(q * q for q in self.quaternion_xyzw))
             if not 0.99 < norm < 1.01:
                 raise FieldError("attitude.quaternion_xyzw", f"its norm is {norm:.6g}; it must be 1")
-            object.__setattr__(self, "quaternion_xyzw", tuple(q / norm for q in self.quaternion_xyzw))
+            object.__setattr__(self, "quaternion_xyzw", _scaled(self.quaternion_xyzw, norm))
 
 
 @dataclass(frozen=True)
@@ -175,8 +176,14 @@ def _unit(where: str, vector: Vector) -> Vector:
     norm = math.sqrt(sum(x * x for x in vector))
     if not (math.isfinite(norm) and norm > 1e-9):
         raise FieldError(where, "must be a finite vector that is not zero")
-    x, y, z = (component / norm for component in vector)
+    x, y, z = _scaled(vector, norm)
     return x, y, z
+
+
+def _scaled(components: tuple[float, ...], norm: float) -> tuple[float, ...]:
+    # What is of length 1 already keeps its bits: a record read back from the store equals the one written.
+    scale = 1.0 if abs(norm - 1.0) < UNIT_TOLERANCE else norm
+    return tuple(component / scale for component in components)
 
 
 def _positive(where: str, value: float) -> None:
