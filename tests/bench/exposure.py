@@ -29,7 +29,6 @@ from sgp4.api import SatrecArray
 sys.path.insert(0, str(Path(__file__).resolve().parents[2]))
 
 from app.catalogue_file import load_catalogue
-
 from app.core.exposure.faces import Places, StreamSet, hazard_rates
 from app.core.orbit.elements import MeanElements
 from app.core.orbit.sgp4_batch import propagate
@@ -62,9 +61,9 @@ def main() -> None:
     """Print the lines."""
     parser = argparse.ArgumentParser(description=__doc__.splitlines()[0])
     parser.add_argument("--fast", action="store_true", help="fewer satellites")
-    satellites = 60 if parser.parse_args().fast else 1000
-    show(exposure_over_sgp4(satellites))
-    for line in run_lines(satellites):
+    fast = parser.parse_args().fast
+    show(exposure_over_sgp4(300 if fast else 1000))
+    for line in run_lines(60 if fast else 1000):
         show(line)
 
 

@@ -6,7 +6,7 @@ good to a microsecond for this century. ERFA carries the leap-second table; noth
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from dataclasses import dataclass
 from datetime import UTC, datetime
@@ -23,6 +23,7 @@ from app.errors import FieldError
 Floats = npt.NDArray[np.float64]
 DAY_S = 86400.0
 UNIX_EPOCH_JD = 2440587.5
+NODE_S = 1800.0
 
 
 @dataclass(frozen=True)
@@ -51,12 +52,13 @@ class TimeGrid:
     @cached_property
     def teme_to_gcrf(self) -> Floats:
         """Rotation matrices (T, 3, 3)."""
-        return frames.teme_to_gcrf(self.utc, self.tt)
+        true_of_date = self._sampled(lambda grid: frames.true_of_date_from_gcrf(grid.tt))
+        return frames.teme_to_gcrf(self.utc, self.tt, true_of_date)
 
     @cached_property
     def sun_km(self) -> Floats:
         """Geocentric geometric Sun (T, 3), km, GCRF axes."""
-        return bodies.sun_km(self.tt)
+        return self._sampled(lambda grid: bodies.sun_km(grid.tt))
 
     @cached_property
     def solar_longitude_deg(self) -> Floats:
@@ -65,6 +67,22 @@ class TimeGrid:
 
     def __len__(self) -> int:
         return len(self.unix_s)
+
+    def _sampled(self, slow: Callable[[TimeGrid], Floats]) -> Floats:
+        """Evaluate a slow, smooth function (T, ...), on a dense grid at half-hour nodes and linearly between.
+
+        Nutation and the Sun's path bend so little that this costs 3e-10 rad (a centimetre at the geostationary
+        ring) and 3 km of the Sun's place, and saves 30 us of ERFA an instant.
+        """
+        if len(self) < 3 or np.ptp(self.unix_s) > (len(self) - 3) * NODE_S:
+            return slow(self)
+        first = float(self.unix_s.min())
+        place = (self.unix_s - first) / NODE_S
+        left = np.floor(place).astype(np.intp)
+        nodes = slow(TimeGrid(first + NODE_S * np.arange(int(left.max()) + 2, dtype=np.float64)))
+        share = (place - left).reshape(-1, *([1] * (nodes.ndim - 1)))
+        between: Floats = nodes[left] * (1.0 - share) + nodes[left + 1] * share
+        return between
 
 
 def regular_grid(start_unix_s: float, stop_unix_s: float, step_s: float) -> TimeGrid:
