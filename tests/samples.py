@@ -24,27 +24,39 @@ def spacecraft(satellite_id: str = "kestrel-1", name: str = "Kestrel", ready_at:
 
 
 def elements(mean_anomaly_deg: float = 10.0) -> MeanElements:
-    return MeanElements("KESTREL", "2026-012B", 2461262.5, 0.25, 15.2, 0.001, 51.6, 10.0, 20.0, mean_anomaly_deg)
+    return MeanElements(
+        "KESTREL", "2026-012B", 2461262.5, 0.25, 15.2, 0.001, 51.6, 10.0, 20.0, mean_anomaly_deg
+    )
+
+
+def band(mid: float) -> dict[str, float | None]:
+    return {"low": None, "mid": mid, "high": None}
 
 
 def body(satellite: str, passage: str = "PER-2026", level: str = "ready", **more: Any) -> dict[str, Any]:
     """An advisory as the pipeline makes it, without revision, status and changes."""
-    times = {"onset": "2026-08-11T00:00:00Z", "peak_at": "2026-08-13T02:00:00Z", "end": "2026-08-15T00:00:00Z"}
-    factor = {"low": 1.2, "mid": 1.9, "high": 3.0}
+    times = {
+        "onset": "2026-08-11T00:00:00Z",
+        "peak_at": "2026-08-13T02:00:00Z",
+        "end": "2026-08-15T00:00:00Z",
+    }
     return {
         "id": f"{passage}.{satellite}",
         "satellite": satellite,
         "stream": passage.split("-")[0],
+        "stream_name": "Perseids",
         "passage": passage,
         "level": level,
         "depth": "plan",
         "issued_at": "2026-08-10T00:00:00Z",
         **times,
-        "satellite_enhancement_peak": {"mass": factor},
-        "enhancement_peak": {"mass": {"aperture": factor}},
-        "expected_impacts": {"mass": 1e-4},
-        "background_impacts": {"mass": 1e-4},
+        "satellite_enhancement_peak": [{"criterion": "mass", **band(1.9)}],
+        "enhancement_peak": [{"criterion": "mass", "face": "aperture", "sensitive": True, **band(1.9)}],
+        "expected_impacts": [{"criterion": "mass", **band(1e-4)}],
+        "background_impacts": [{"criterion": "mass", **band(1e-4)}],
         "lee_windows": [],
+        "lee_windows_from": None,
+        "lee_windows_until": None,
         "safe_attitude_windows": [],
         "actions": ["Prepare."],
         "plan_until": "2026-08-17T00:00:00Z",

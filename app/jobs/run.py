@@ -8,6 +8,8 @@ from functools import partial
 
 from app import __version__
 from app.catalogue_file import load_catalogue
+from app.core.orbit.elements import SECONDS_PER_DAY
+from app.core.streams.model import Catalogue
 from app.jobs.chunk import Compute, chunk_size, compute_chunk
 from app.jobs.executor import executor, in_process
 from app.jobs.heartbeat import Heartbeat
@@ -26,9 +28,10 @@ MOST_SATELLITES = 1_000_000
 
 @dataclass(frozen=True)
 class Seams:
-    """What tests replace: the computation (picklable), the wall clock, the length of the lease."""
+    """What tests replace: the computation (picklable), the catalogue, the wall clock, the lease's length."""
 
     compute: Compute = compute_satellites
+    catalogue: Callable[[], Catalogue] = load_catalogue
     clock: Clock = utc_now
     lease_s: float = LEASE_S
 
@@ -73,26 +76,33 @@ def perform(
 
 
 def _compute(store: Store, settings: Settings, run: RunRecord, progress: Progress, seams: Seams) -> None:
-    task = partial(compute_chunk, seams.compute, run_inputs(settings, run))
+    inputs = run_inputs(settings, run, seams.catalogue())
+    looked_until_unix_s = inputs.as_of_unix_s + inputs.outlook_days * SECONDS_PER_DAY
+    task = partial(compute_chunk, seams.compute, inputs)
     chunks = _chunks(store, run)
     window = 1 if in_process(settings) else settings.workers + 2
     progress(0, run.satellites_total)
     for results in spread(task, chunks, partial(executor, settings), window):
-        staged = stage(store, run, results)
+        staged = stage(store, run, results, looked_until_unix_s=looked_until_unix_s)
         progress(staged.satellites_done, run.satellites_total)
 
 
-def run_inputs(settings: Settings, run: RunRecord) -> RunInputs:
+def run_inputs(settings: Settings, run: RunRecord, catalogue: Catalogue) -> RunInputs:
     """Return everything the computation of a run depends on, besides the satellites."""
+    return inputs_at(settings, catalogue, run.as_of_unix_s, run.id)
+
+
+def inputs_at(settings: Settings, catalogue: Catalogue, as_of_unix_s: float, run_id: str) -> RunInputs:
+    """Return the same for any computation: a run, or an answer computed when asked for."""
     return RunInputs(
-        as_of_unix_s=run.as_of_unix_s,
+        as_of_unix_s=as_of_unix_s,
         horizon_low_days=settings.horizon_low_days,
         horizon_high_days=settings.horizon_high_days,
         outlook_days=settings.outlook_days,
         mass_law=settings.mass_law,
-        run_id=run.id,
+        run_id=run_id,
         software=f"stonechat {__version__}",
-        catalogue=load_catalogue(),
+        catalogue=catalogue,
     )
 
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
@@ -32,15 +33,25 @@ class Draft:
     body: dict[str, Any]
 
 
-def drafts(heads: Mapping[str, Head], bodies: Sequence[dict[str, Any]], as_of_unix_s: float) -> list[Draft]:
+def drafts(
+    heads: Mapping[str, Head],
+    bodies: Sequence[dict[str, Any]],
+    as_of_unix_s: float,
+    looked_until_unix_s: float = math.inf,
+) -> list[Draft]:
     """Compare what a run produced for one satellite with what is published for it.
 
     An advisory that is new, or comes back after a withdrawal, gets a revision; one that changed in a way an
-    operator acts on gets a revision; one that is no longer produced and has not ended is withdrawn.
+    operator acts on gets a revision; one that is no longer produced and has not ended is withdrawn, unless
+    it begins after ``looked_until_unix_s``, up to where the run looked: there it says nothing.
     """
     produced = {body["id"] for body in bodies}
     candidates = [_draft(heads.get(body["id"]), body, as_of_unix_s) for body in bodies]
-    gone = [head for advisory_id, head in heads.items() if advisory_id not in produced]
+    gone = [
+        head
+        for advisory_id, head in heads.items()
+        if advisory_id not in produced and parse_utc(head.body["onset"], "onset") < looked_until_unix_s
+    ]
     return [draft for draft in candidates if draft] + withdrawals(gone, as_of_unix_s, NO_LONGER)
 
 
@@ -54,9 +65,10 @@ def withdrawals(heads: Sequence[Head], as_of_unix_s: float, reason: str) -> list
 
 
 def _draft(head: Head | None, body: dict[str, Any], as_of_unix_s: float) -> Draft | None:
-    if head is None or head.status == "withdrawn":
-        number = 1 if head is None else head.revision + 1
-        return _numbered(number, "current", {**body, "changes": rule.first()})
+    if head is None:
+        return _numbered(1, "current", {**body, "changes": rule.first()})
+    if head.status == "withdrawn":
+        return _numbered(head.revision + 1, "current", {**body, "changes": rule.again()})
     changes = rule.changes(head.body, body, as_of_unix_s)
     if not changes:
         return None

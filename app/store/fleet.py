@@ -62,9 +62,7 @@ def put_satellite(session: Session, spacecraft: Spacecraft, *, clock: Clock = ut
         return False
     change_seq = next_change(session)
     session.merge(
-        Satellite(
-            id=spacecraft.id, status="registered", body=body, change_seq=change_seq, changed_at=clock()
-        )
+        Satellite(id=spacecraft.id, status="registered", body=body, change_seq=change_seq, changed_at=clock())
     )
     session.flush()
     return created
@@ -135,9 +133,19 @@ def current_orbit(session: Session, satellite_id: str) -> OrbitRecord:
     return _orbit_record(row)
 
 
-def orbit_history(session: Session, satellite_id: str, limit: int = 100) -> list[OrbitRecord]:
-    """Return a satellite's orbits, also superseded ones, the newest first."""
-    statement = select(Orbit).where(Orbit.satellite_id == satellite_id).order_by(Orbit.id.desc()).limit(limit)
+def orbit_history(
+    session: Session, satellite_id: str, after: int | None = None, limit: int = 100
+) -> list[OrbitRecord]:
+    """Return a satellite's orbits, also superseded ones, the newest first.
+
+    ``after``: the ``change_seq`` of the last one of the page before. Raises ``NotFoundError`` when the
+    satellite is not registered.
+    """
+    _registered(session, satellite_id)
+    statement = select(Orbit).where(Orbit.satellite_id == satellite_id).limit(limit)
+    statement = statement.order_by(Orbit.change_seq.desc())
+    if after is not None:
+        statement = statement.where(Orbit.change_seq < after)
     return [_orbit_record(row) for row in session.scalars(statement)]
 
 

@@ -151,7 +151,7 @@ def list_runs(session: Session, after: int | None = None, limit: int = 100) -> l
 
 def latest_published(session: Session) -> RunRecord | None:
     """Return the run that was published last, None before the first."""
-    statement = select(Run).where(Run.state == "published").order_by(Run.finished_at.desc()).limit(1)
+    statement = select(Run).where(Run.state == "published").order_by(Run.change_seq.desc()).limit(1)
     row = session.scalars(statement).one_or_none()
     return None if row is None else _record(row)
 

@@ -7,11 +7,13 @@ update and no two writers can deadlock. Writing transactions are therefore kept 
 
 from __future__ import annotations
 
+import sqlite3
 from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
 from typing import Any, Self
 
+from psycopg.errors import LockNotAvailable
 from sqlalchemy import Connection, Engine, create_engine, event, text
 from sqlalchemy.engine import URL
 from sqlalchemy.exc import DBAPIError, OperationalError
@@ -52,12 +54,15 @@ class Store:
     def write(self) -> Iterator[Session]:
         """Give the only writing session: commit at the end, roll back on an error.
 
-        Raises ``ConflictError`` when other writers keep the database busy for too long.
+        Raises ``ConflictError`` when other writers keep the database busy for too long, and SQLAlchemy's
+        ``OperationalError`` when it cannot be reached.
         """
         with Session(self._writer, expire_on_commit=False) as session:
             try:
                 session.connection()
             except OperationalError as error:
+                if not _is_busy(error):
+                    raise
                 raise ConflictError(f"the database is busy ({_first_line(error)}); try again") from error
             yield session
             session.commit()
@@ -135,6 +140,13 @@ def _begin(connection: Connection) -> None:
         connection.exec_driver_sql("BEGIN IMMEDIATE" if writing else "BEGIN")
     elif writing:
         connection.exec_driver_sql(f"SELECT pg_advisory_xact_lock({WRITER_LOCK})")
+
+
+def _is_busy(error: OperationalError) -> bool:
+    """Say whether a wait for the other writers ended without a turn."""
+    if isinstance(error.orig, sqlite3.OperationalError):
+        return error.orig.sqlite_errorcode & 0xFF == sqlite3.SQLITE_BUSY  # the rest of the code says how
+    return isinstance(error.orig, LockNotAvailable)
 
 
 def _first_line(error: DBAPIError) -> str:

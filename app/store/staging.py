@@ -7,6 +7,7 @@ that dies leaves staged rows only, which the next run throws away.
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterable, Sequence
 from datetime import datetime
 from typing import Any, Protocol
@@ -40,18 +41,26 @@ class Result(Protocol):
     def advisories(self) -> Sequence[dict[str, Any]]: ...
 
 
-def stage(store: Store, run: RunRecord, results: Sequence[Result]) -> RunRecord:
+def stage(
+    store: Store, run: RunRecord, results: Sequence[Result], *, looked_until_unix_s: float = math.inf
+) -> RunRecord:
     """Write one chunk's new revisions under the run, invisible, and return the run with its progress.
 
+    ``looked_until_unix_s``: advisories that begin later were not looked for, and stay as they are.
     Raises ``ConflictError`` when the run is no longer running (another one took over).
     """
+    span = run.as_of_unix_s, looked_until_unix_s
     with store.read() as session:
-        prepared = [(result, _drafts(session, result, run.as_of_unix_s)) for result in results]
+        prepared = [(result, _drafts(session, result, *span)) for result in results]
     with store.write() as session:
+        # First of all: what was prepared for a run that lost its place may collide with its successor's.
+        _require_running(session, run.id)
         for result, revisions in prepared:
             if _settle(session, run.id, result):
                 _insert(session, Staged, result.satellite_id, run.id, revisions)
-        _require_running(session, run.id, satellites_done=_count(session, run.id, "computed", "failed"))
+        row = session.get_one(Run, run.id)
+        row.satellites_done = _count(session, run.id, "computed", "failed")
+        session.flush()
         return get_run(session, run.id)
 
 
@@ -103,12 +112,12 @@ def _running() -> Any:
     return select(Run.id).where(Run.state == "running")
 
 
-def _drafts(session: Session, result: Result, as_of_unix_s: float) -> list[Draft]:
+def _drafts(session: Session, result: Result, as_of_unix_s: float, looked_until_unix_s: float) -> list[Draft]:
     if result.state != "computed":
         return []
     ids = [body["id"] for body in result.advisories]
     heads = dict(_heads(session, result.satellite_id, as_of_unix_s, ids))
-    return drafts(heads, result.advisories, as_of_unix_s)
+    return drafts(heads, result.advisories, as_of_unix_s, looked_until_unix_s)
 
 
 def _heads(

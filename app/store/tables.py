@@ -108,7 +108,7 @@ class Orbit(Table):
             sqlite_where=text("status = 'current'"),
             postgresql_where=text("status = 'current'"),
         ),
-        Index(None, "satellite_id", "id"),
+        Index(None, "satellite_id", "change_seq"),
     )
     id: Mapped[int] = mapped_column(Sequence, primary_key=True)
     satellite_id: Mapped[str] = mapped_column(Key, ForeignKey("satellites.id"))
@@ -135,6 +135,7 @@ class Run(Table):
             postgresql_where=text("state = 'running'"),
         ),
         Index(None, "state", "requested_seq"),
+        Index(None, "state", "change_seq"),
     )
     id: Mapped[str] = mapped_column(Key, primary_key=True)
     requested_seq: Mapped[int] = mapped_column(Sequence, unique=True)
@@ -226,6 +227,7 @@ class Revision(RevisionColumns, Table):
         latest_index("uq_revisions_latest", "advisory_id", unique=True),
         latest_index("ix_revisions_latest_change", "change_seq", "advisory_id"),
         latest_index("ix_revisions_latest_satellite", "satellite_id", "change_seq", "advisory_id"),
+        latest_index("ix_revisions_latest_changed_at", "changed_at", "change_seq"),
         Index(None, "run_id"),
     )
     change_seq: Mapped[int] = mapped_column(Sequence)

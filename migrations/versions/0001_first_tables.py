@@ -85,7 +85,7 @@ def _register() -> None:
         _to("orbits", "satellite_id", "satellites"),
         sa.PrimaryKeyConstraint("id", name=op.f("pk_orbits")),
     )
-    op.create_index(op.f("ix_orbits_satellite_id_id"), "orbits", ["satellite_id", "id"])
+    op.create_index(op.f("ix_orbits_satellite_id_change_seq"), "orbits", ["satellite_id", "change_seq"])
     _partial_index("uq_orbits_current", "orbits", ["satellite_id"], "status = 'current'", unique=True)
 
 
@@ -109,6 +109,7 @@ def _runs() -> None:
         sa.UniqueConstraint("requested_seq", name=op.f("uq_runs_requested_seq")),
     )
     op.create_index(op.f("ix_runs_state_requested_seq"), "runs", ["state", "requested_seq"])
+    op.create_index(op.f("ix_runs_state_change_seq"), "runs", ["state", "change_seq"])
     _partial_index("uq_runs_running", "runs", ["state"], "state = 'running'", unique=True)
     op.create_table(
         "run_satellites",
@@ -160,6 +161,7 @@ def _revisions() -> None:
     _partial_index("uq_revisions_latest", "revisions", ["advisory_id"], latest, unique=True)
     _partial_index("ix_revisions_latest_change", "revisions", by_change, latest)
     _partial_index("ix_revisions_latest_satellite", "revisions", ["satellite_id", *by_change], latest)
+    _partial_index("ix_revisions_latest_changed_at", "revisions", ["changed_at", "change_seq"], latest)
     op.create_index(op.f("ix_revisions_run_id"), "revisions", ["run_id"])
 
 

@@ -72,7 +72,10 @@ def test_orbits_are_kept_and_the_newest_is_current(store: Store) -> None:
     with store.read() as session:
         record = current_orbit(session, "kestrel-1")
         assert (record.elements, record.source_format) == (elements(20.0), "omm-json")
-        assert [each.elements.mean_anomaly_deg for each in orbit_history(session, "kestrel-1")] == [20.0, 10.0]
+        assert [each.elements.mean_anomaly_deg for each in orbit_history(session, "kestrel-1")] == [
+            20.0,
+            10.0,
+        ]
 
 
 def test_without_orbit_says_what_to_give(store: Store) -> None:
@@ -106,3 +109,21 @@ def test_a_removed_satellite_is_gone_and_can_be_registered_again_without_its_orb
         with pytest.raises(NotFoundError, match="no orbit yet"):
             current_orbit(session, "kestrel-1")
         assert len(orbit_history(session, "kestrel-1")) == 1
+
+
+def test_a_history_of_orbits_pages_from_the_newest_and_ends_with_the_satellite(store: Store) -> None:
+    with store.write() as session:
+        put_satellite(session, spacecraft())
+        for anomaly in range(5):
+            put_orbit(session, "kestrel-1", elements(float(anomaly)), "tle")
+    found: list[float] = []
+    after: int | None = None
+    with store.read() as session:
+        while page := orbit_history(session, "kestrel-1", after, limit=2):
+            found += [record.elements.mean_anomaly_deg for record in page]
+            after = page[-1].change_seq
+    assert found == [4.0, 3.0, 2.0, 1.0, 0.0]
+    with store.write() as session:
+        delete_satellite(session, "kestrel-1", AS_OF_UNIX_S)
+        with pytest.raises(NotFoundError, match="there is no satellite"):
+            orbit_history(session, "kestrel-1")

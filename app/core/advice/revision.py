@@ -25,6 +25,11 @@ def first() -> list[Change]:
     return [{"what": "new", "text": "First advisory for this passage."}]
 
 
+def again() -> list[Change]:
+    """Say that the passage was withdrawn and is found once more."""
+    return [{"what": "new", "text": "This passage was withdrawn; the newest computation finds it again."}]
+
+
 def changes(previous: Body, new: Body, as_of_unix_s: float) -> list[Change]:
     """List what has moved since ``previous``; empty when a new revision would only be noise."""
     return [
@@ -86,7 +91,11 @@ def _times(previous: Body, new: Body, as_of_unix_s: float) -> Iterator[Change]:
 
 
 def _windows(previous: Body, new: Body, as_of_unix_s: float) -> Iterator[Change]:
-    """Compare lee windows where both revisions looked for them; a longer look counts once it is a day longer."""
+    """Compare lee windows where both revisions looked for them, and say when the new one looked further.
+
+    A longer look counts when it is the first one, when it reaches the end of the passage, or else once it is
+    a day longer: the plan's horizon moves on with every run.
+    """
     before, after = _cover(previous), _cover(new)
     both = max(before[0], after[0], as_of_unix_s), min(before[1], after[1])
     lost = _unmatched(previous, new, both)
@@ -97,12 +106,17 @@ def _windows(previous: Body, new: Body, as_of_unix_s: float) -> Iterator[Change]
             "text": f"Lee windows moved: {len(lost)} of the former ones no longer hold, {len(gained)} are new.",
         }
     added = [w for w in _lee(new) if w[0] >= max(before[1], as_of_unix_s)]
-    if added and after[1] - max(before[1], as_of_unix_s) >= COVERAGE_CHANGE_S:
+    if added and _looks_further(before[1], after[1], parse_utc(new["end"])):
         until = format_utc(after[1])
         yield {
             "what": "lee_windows",
             "text": f"{len(added)} lee windows were added; they now reach to {until}.",
         }
+
+
+def _looks_further(before_unix_s: float, after_unix_s: float, end_unix_s: float) -> bool:
+    longer_s = after_unix_s - before_unix_s
+    return longer_s >= COVERAGE_CHANGE_S or (longer_s > TIME_CHANGE_S and after_unix_s >= end_unix_s)
 
 
 def _cover(body: Body) -> tuple[float, float]:
