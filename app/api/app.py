@@ -49,7 +49,7 @@ def create_app(
     seconds). Raises ``SettingsError`` when the database cannot be reached.
     """
     opened = store or open_store(settings)
-    context = Context(settings, opened, catalogue or _catalogue(), computations, clock, wall, Metrics())
+    context = Context(settings, opened, catalogue or seams.catalogue(), computations, clock, wall, Metrics())
     worker = QueueWorker(opened, settings, seams=seams) if work else None
     app = FastAPI(
         title="Stonechat",
@@ -65,12 +65,6 @@ def create_app(
     )
     _assemble(app, context)
     return app
-
-
-def _catalogue() -> Catalogue:
-    from app.catalogue_file import load_catalogue
-
-    return load_catalogue()
 
 
 def _assemble(app: FastAPI, context: Context) -> None:

@@ -17,6 +17,7 @@ from app.api.caching import refuse_unchanged, strong_tag
 from app.api.metrics import Metrics
 from app.core.streams.model import Catalogue
 from app.errors import NotFoundError
+from app.jobs.run import inputs_at
 from app.on_demand import Series
 from app.pipeline import Registered, RunInputs
 from app.settings import Settings
@@ -60,14 +61,7 @@ class Context:
 
     def inputs(self) -> RunInputs:
         """Return what a computation on demand depends on besides the satellite."""
-        chosen = {name: getattr(self.settings, name) for name in COMPUTED_FROM}
-        return RunInputs(
-            as_of_unix_s=self.hour_unix_s(),
-            run_id=ON_DEMAND,
-            software=SOFTWARE,
-            catalogue=self.catalogue,
-            **chosen,
-        )
+        return inputs_at(self.settings, self.catalogue, self.hour_unix_s(), ON_DEMAND)
 
     def hour_unix_s(self) -> float:
         """Return the last full hour of the clock."""

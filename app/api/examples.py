@@ -160,7 +160,14 @@ STREAM: dict[str, Any] = {
     "enabled": True,
     "why_off": None,
     "components": [
-        {"zhr_peak": {"value": 100.0, "source": "IMO meteor shower calendar", "provenance": "published-read"}}
+        {
+            "zhr_peak": {
+                "value": 100.0,
+                "source": "IMO18",
+                "citation": ["International Meteor Organization, 2018 Meteor Shower Calendar"],
+                "provenance": "read",
+            }
+        }
     ],
     "notes": [],
     "catalogue_digest": DIGEST,

@@ -215,11 +215,12 @@ class Windows(Shape):
 
 
 class CatalogueValue(Shape):
-    """A value of the catalogue (null: none is known) with where it comes from."""
+    """A value of the catalogue with where it comes from: read there, computed from it, or from memory."""
 
-    value: FiniteFloat | str | None
-    source: str | None
-    provenance: str | None
+    value: FiniteFloat
+    source: str
+    citation: list[str]
+    provenance: Literal["read", "computed", "memory"]
 
 
 class StreamOut(Shape):

@@ -29,7 +29,7 @@ PER = Stream("PER", "Perseids", (Component("main", 140.0, 100.0, 0.2, 0.2),), 2.
 
 
 def entry(code: str) -> CatalogueEntry:
-    values = ({"zhr_peak": {"value": 100.0, "source": "invented", "provenance": "memory"}},)
+    values = ({"zhr_peak": {"value": 100.0, "source": "IMO18", "provenance": "read"}},)
     stream = PER if code == "PER" else None
     return CatalogueEntry(code, f"Stream {code}", "A", stream is not None, None, stream, values)
 

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
 from typing import Annotated, Any
 
 from fastapi import APIRouter, Path, Query
@@ -13,6 +12,7 @@ from app.api.caching import reply
 from app.api.deps import AskedNow
 from app.api.paging import Page, Pager
 from app.api.schemas import ItemsPage, StreamOut
+from app.catalogue_file import entry_document
 from app.core.streams.model import CatalogueEntry
 from app.errors import NotFoundError
 from app.formats.text import shown as quoted
@@ -48,17 +48,4 @@ def read_stream(asked: AskedNow, code: StreamCode) -> Response:
 
 
 def _shown(entry: CatalogueEntry, digest: str) -> dict[str, Any]:
-    return {
-        "code": entry.code,
-        "name": entry.name,
-        "confidence": entry.confidence,
-        "enabled": entry.enabled,
-        "why_off": entry.why_off,
-        "components": [_component(row) for row in entry.values],
-        "notes": list(entry.notes),
-        "catalogue_digest": digest,
-    }
-
-
-def _component(row: Mapping[str, Mapping[str, object]]) -> dict[str, dict[str, object]]:
-    return {column: dict(value) for column, value in row.items()}
+    return {**entry_document(entry), "catalogue_digest": digest}
