@@ -25,7 +25,7 @@ class NotModified(Exception):  # no error: it ends a GET early, before its body 
 
 def strong_tag(*parts: str) -> str:
     """Name a representation by everything it depends on."""
-    text = "\n".join(parts).encode("utf-8", "surrogateescape")
+    text = "\n".join(parts).encode("utf-8", "surrogatepass")
     return f'"{hashlib.sha256(text).hexdigest()[:TAG_DIGITS]}"'
 
 

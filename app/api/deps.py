@@ -7,6 +7,7 @@ import math
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from dataclasses import dataclass
+from functools import cached_property
 from typing import Annotated, Any
 
 from fastapi import Depends, Request
@@ -53,7 +54,7 @@ class Context:
     wall: Clock
     metrics: Metrics
 
-    @property
+    @cached_property
     def edition(self) -> str:
         """Name everything besides the database and the request that an answer depends on."""
         chosen = [f"{name}={getattr(self.settings, name)!r}" for name in COMPUTED_FROM]
@@ -77,8 +78,9 @@ class Asked:
 
     def tag(self, *parts: object) -> str:
         """Name the representation at this address that ``parts`` (a change number, a date) determine."""
-        url = self.request.url
-        return strong_tag(self.context.edition, url.path, url.query, *map(str, parts))
+        scope = self.request.scope  # not the request's URL, which is put together with the client's Host
+        address = scope["path"], scope["query_string"].decode("latin-1")
+        return strong_tag(self.context.edition, *address, *map(str, parts))
 
     def fresh_tag(self, *parts: object) -> str:
         """Return the tag; ``NotModified`` ends the request when the client holds this representation."""

@@ -9,7 +9,7 @@ import json
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from typing import Any, TypeVar
-from urllib.parse import urlencode
+from urllib.parse import quote, urlencode
 
 from fastapi import Request
 from pydantic import BaseModel, ConfigDict, Field
@@ -68,7 +68,7 @@ class Pager:
             return {"items": [show(row) for row in shown], "next_cursor": None}, {}
         cursor = _encode(self._list_name, key(shown[-1]))
         query = urlencode([*self._filters, ("limit", self.page.limit), ("cursor", cursor)])
-        link = f'<{self.request.url.path}?{query}>; rel="next"'
+        link = f'<{quote(self.request.scope["path"])}?{query}>; rel="next"'
         return {"items": [show(row) for row in shown], "next_cursor": cursor}, {"Link": link}
 
     @property
@@ -78,7 +78,7 @@ class Pager:
 
     @property
     def _list_name(self) -> str:
-        text = json.dumps([self.request.url.path, self._filters]).encode()
+        text = json.dumps([self.request.scope["path"], self._filters]).encode()
         return hashlib.sha256(text).hexdigest()[:8]
 
 

@@ -68,6 +68,14 @@ def test_a_body_that_is_no_json_is_refused(client: TestClient, content: bytes) -
     assert answer.json()["where"]
 
 
+@pytest.mark.parametrize("depth", [21, 200, 900, 935, 960, 995])
+def test_a_body_nested_more_deeply_than_needed_is_refused(client: TestClient, depth: int) -> None:
+    content = b'{"orbit":' * depth + b"1" + b"}" * depth
+    answer = client.post("/v1/trials", content=content, headers=JSON)
+    assert is_problem(answer, 422)
+    assert "nested" in answer.json()["detail"]
+
+
 def test_a_body_that_is_too_large_is_refused_with_and_without_a_declared_length(client: TestClient) -> None:
     content = b" " * (MAX_BODY_BYTES + 1)
 
@@ -124,3 +132,12 @@ def test_a_database_that_is_away_is_a_503_to_try_again(make: Callable[..., FastA
     assert is_problem(answer, 503, type="/problems/unavailable")
     assert answer.headers["retry-after"] == "5"
     assert "secret" not in answer.text
+
+
+@pytest.mark.parametrize("host", ["[", "[::1", "a/b?c#d", "x" * 5_000, ""])
+def test_a_strange_host_changes_nothing(client: TestClient, host: str) -> None:
+    for path in ("/v1/advisories", "/v1/streams?limit=1", "/readyz"):
+        usual, strange = client.get(path), client.get(path, headers={"Host": host})
+        assert (strange.status_code, strange.content) == (200, usual.content)
+        assert strange.headers.get("etag") == usual.headers.get("etag")
+        assert strange.headers.get("link") == usual.headers.get("link")

@@ -138,7 +138,7 @@ header_text = st.text(alphabet=string.printable.strip() + " \xff\x80", max_size=
 @given(tags=header_text, media_type=header_text)
 def test_any_header(client: TestClient, tags: str, media_type: str) -> None:
     given_tags = tags.encode("latin-1")
-    for name in ("If-None-Match", "If-Match", "Accept", "Range", "Content-Type"):
+    for name in ("If-None-Match", "If-Match", "Accept", "Range", "Content-Type", "Host", "X-Forwarded-Host"):
         check(client.get("/v1/advisories", headers={name: given_tags}))
     guarded = {"If-Match": given_tags, "Content-Type": media_type.encode("latin-1")}
     check(client.put(f"/v1/satellites/{SATELLITE}", content=b"{}", headers=guarded))
