@@ -7,8 +7,7 @@ from app.api import examples
 from tests.api.harness import AS_OF_UNIX_S, is_problem, put_orbit, put_satellite
 
 ADDRESS = "/v1/satellites/kestrel-1/orbit"
-# The example of CCSDS 502.0-B-3 style and the element set below are the same kind of orbit; the two lines are
-# those that Spacetrack Report No. 3 (Hoots & Roehrich 1980) gives as its test case, with checksums.
+# The test case of Spacetrack Report No. 3 (Hoots & Roehrich 1980), checksums added; lines from memory.
 TLE = (
     "1 88888U          80275.98708465  .00073094  13844-3  66816-4 0    87\r\n"
     "2 88888  72.8435 115.9689 0086731  52.6988 110.5714 16.05824518  1058\r\n"
