@@ -1,0 +1,19 @@
+"""``stonechat migrate``."""
+
+from __future__ import annotations
+
+import argparse
+
+from app.settings import load_settings
+from app.store.session import open_store
+
+
+def run(options: argparse.Namespace) -> int:
+    """Bring the database to the newest schema."""
+    settings = load_settings(dir=options.dir)
+    with open_store(settings) as store:
+        already = store.at_head()
+        store.migrate()
+    shown = settings.database.render_as_string(hide_password=True)
+    print(f"{shown}: " + ("already at the newest schema" if already else "now at the newest schema"))
+    return 0
