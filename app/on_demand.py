@@ -63,7 +63,7 @@ def satellite_series(
     _check_size(from_unix_s, to_unix_s, step_s)
     plan = _plan(inputs, satellite, elements, from_unix_s, to_unix_s, step_s)
     rows = criterion_rows(satellite.spacecraft)
-    if len(rows) * plan.rates.shape[1] * plan.rates.shape[2] > MOST_VALUES:
+    if len(rows) * len(plan.plan.indices) * len(plan.track.unix_s) > MOST_VALUES:
         raise FieldError("step_s", "the answer would be too large; ask for fewer samples")
     base = _baseline(satellite, elements, 0.5 * (from_unix_s + to_unix_s))
     by_stream, whole = base.row_excess(plan.rates), base.satellite_excess(plan.rates)
@@ -87,8 +87,8 @@ def lee_windows(
 ) -> list[dict[str, Any]]:
     """Lee windows that overlap an interval, whole, with the streams they hide.
 
-    The streams that matter are those with a tenth or more of the excess at ``ready_at``; when none has, the
-    strongest one. Errors as for ``satellite_series``.
+    The streams that matter are those that ``PlanExposure.mattering`` finds; when none does, the strongest one.
+    Errors as for ``satellite_series``.
     """
     elements = _orbit(satellite)
     _check_span(inputs, elements, from_unix_s, to_unix_s)

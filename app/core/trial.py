@@ -25,7 +25,7 @@ from app.core.streams.sporadic import analytic_speeds
 from app.errors import FieldError, OrbitError
 
 Floats = npt.NDArray[np.float64]
-MOST_VALUES = 5_000_000  # rows x streams x states: 40 MB
+MOST_VALUES = 500_000  # rows x streams x states: an answer of some 15 MB
 FARTHEST_KM, FASTEST_KM_S = 2e6, 100.0
 LEAST_TURN = 1e-9  # |r x v| / |r||v| below which a state has no orbit plane
 

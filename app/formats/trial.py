@@ -95,6 +95,9 @@ def _orbit_states(model: TrialIn) -> tuple[Floats, Floats, Floats]:
 
 
 def _elements(orbit: dict[str, Any] | None) -> MeanElements:
+    for keyword, value in (orbit or {}).items():
+        if isinstance(value, dict | list):
+            raise FieldError(f"orbit.{shown(keyword)}", "must be a number or a text")
     results = read_orbits(json.dumps(orbit).encode(), "orbit", "application/json")
     if len(results) != 1:
         raise FieldError("orbit", f"holds {len(results)} element sets; give one OMM object")

@@ -15,7 +15,7 @@ from app.core.exposure.faces import Places, hazard_rates, stream_focusing
 from app.core.spacecraft.model import Spacecraft
 
 Floats = npt.NDArray[np.float64]
-MATTERING_SHARE = 0.1  # of the excess at ready_at: a weaker stream need not be sheltered from
+UNHIDDEN_SHARE = 0.25  # of the excess at ready_at: what all streams left unhidden may add together
 
 
 class PlanExposure:
@@ -61,10 +61,16 @@ class PlanExposure:
         return self._lee[members]
 
     def mattering(self, base: Baseline, start_unix_s: float, end_unix_s: float) -> tuple[int, ...]:
-        """Streams whose excess on any trigger reaches a tenth of that at ``ready_at`` between two instants."""
-        floor = MATTERING_SHARE * (self.spacecraft.policy.ready_at - 1.0)
+        """Streams to be sheltered from between two instants.
+
+        The weakest are left out while their largest excesses, on whichever trigger, together stay below a
+        quarter of the excess at ``ready_at``.
+        """
         strongest = self._strongest(base, start_unix_s, end_unix_s)
-        return tuple(int(i) for i in np.flatnonzero(strongest >= floor))
+        weakest_first = np.argsort(strongest, kind="stable")
+        allowed = UNHIDDEN_SHARE * (self.spacecraft.policy.ready_at - 1.0)
+        kept = np.cumsum(strongest[weakest_first]) >= allowed
+        return tuple(sorted(int(i) for i in weakest_first[kept]))
 
     def strongest(self, base: Baseline, start_unix_s: float, end_unix_s: float) -> tuple[int, ...]:
         """The one stream with the largest excess between two instants; none when no stream is active."""

@@ -57,16 +57,25 @@ def run_sky(
     """Lay out a run that starts at ``as_of_unix_s``."""
     every = StreamSet(tuple(streams), law)
     passages = find_passages(streams, as_of_unix_s, as_of_unix_s + outlook_days * DAY_S)
-    plan = plan_sky(every, as_of_unix_s, as_of_unix_s + plan_days * DAY_S)
+    plan = plan_sky(every, as_of_unix_s, as_of_unix_s + plan_days * DAY_S, passages=passages)
     return RunSky(as_of_unix_s, every, plan, outlook_grid(streams, passages))
 
 
 def plan_sky(
-    streams: StreamSet, start_unix_s: float, stop_unix_s: float, step_s: float = PLAN_STEP_S
+    streams: StreamSet,
+    start_unix_s: float,
+    stop_unix_s: float,
+    step_s: float = PLAN_STEP_S,
+    passages: Sequence[Passage] | None = None,
 ) -> PlanSky:
-    """State of the streams that are active between two instants, on a grid shared by all satellites."""
+    """State of the streams that are active between two instants, on a grid shared by all satellites.
+
+    ``passages``: where they are known already; those outside the interval do not matter.
+    """
     grid = _shared_grid(start_unix_s, stop_unix_s, step_s)
-    touched = {p.stream for p in find_passages(streams.streams, start_unix_s, stop_unix_s)}
+    if passages is None:
+        passages = find_passages(streams.streams, start_unix_s, stop_unix_s)
+    touched = {p.stream for p in passages if p.end_unix_s > start_unix_s and p.start_unix_s < stop_unix_s}
     indices = tuple(sorted(touched))
     active = streams.subset(indices)
     return PlanSky(grid, indices, active, stream_state(active.streams, grid.solar_longitude_deg))

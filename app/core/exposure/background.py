@@ -8,7 +8,7 @@ sin(alpha) = R/r sqrt((1 + 2a/R)/(1 + 2a/r)), a = mu/v_inf^2: bent rays, not str
 
 from __future__ import annotations
 
-from functools import cache
+from functools import lru_cache
 
 import numpy as np
 import numpy.typing as npt
@@ -28,6 +28,9 @@ COARSE: Nodes = (8, 16)  # enough where a dozen phases are averaged
 SAME_SKY_ECCENTRICITY = 0.003  # below it every phase of a nadir-pointing orbit sees the same sky within 0.5 %
 PHASES, ECCENTRIC_PHASES = 12, 24
 ECCENTRIC = 0.1
+SPEED_STEP_KM_S = 0.01
+FASTEST_KM_S = 200.0  # sporadics and satellite together stay well below
+HEAVIEST_G = 1e12  # keeps the flux of the slowest above zero in floating point
 
 
 def follows_orbit(spacecraft: Spacecraft) -> bool:
@@ -109,7 +112,7 @@ def _blocked_cosine(distance_km: float, v_inf_km_s: Floats) -> Floats:
 def _open_sky(blocked_cosine: Floats, nodes: Nodes) -> tuple[Floats, Floats]:
     """Directions of motion (3, K, D), z up, and solid angles (K, D), from straight down to the blocked cone."""
     polar, around = nodes
-    x, weight = np.polynomial.legendre.leggauss(polar)
+    x, weight = _gauss(polar)
     half = 0.5 * (blocked_cosine + 1.0)[:, None]
     up = half * (x + 1.0) - 1.0
     azimuth = (np.arange(around) + 0.5) * (2.0 * np.pi / around)
@@ -134,33 +137,41 @@ def _vertical_frame(r_km: Floats) -> Floats:
 def _on_faces(spacecraft: Spacecraft, velocity: Floats, density: Floats, normals: Floats) -> Floats:
     """Hazard of each row, (C,), for a quadrature of the sky; ``velocity`` (3, N), ``normals`` (F, 3) in body axes."""
     inward = np.maximum(-(normals @ velocity), 0.0)
-    log_speed = 0.5 * np.log(np.einsum("kn,kn->n", velocity, velocity))
+    speed = np.sqrt(np.einsum("kn,kn->n", velocity, velocity))
     shared: dict[CriticalMass, Floats] = {}
     rates = []
     for row in criterion_rows(spacecraft):
         limit = critical_mass(row.criterion, SPORADIC_DENSITY_KG_M3)
         on_face = inward[row.face]
         if limit.normal_speed:
-            lit = on_face > 0.0
-            above = _gruen_above(limit, np.log(on_face[lit]))
-            rates.append(np.dot(on_face[lit] * density[lit], above))
+            above = _gruen_above(limit, on_face)
+            rates.append(np.dot(on_face * density, above))
             continue
         if limit not in shared:
-            shared[limit] = density * _gruen_above(limit, log_speed)
+            shared[limit] = density * _gruen_above(limit, speed)
         rates.append(np.dot(on_face, shared[limit]))
     return np.array(rates)
 
 
-def _gruen_above(limit: CriticalMass, log_speed: Floats) -> Floats:
-    """Gruen flux above the critical mass at speeds given by their natural logarithm."""
-    log_mass, log_flux = _gruen_table()
-    wanted = np.log(limit.at_1_km_s_g) - limit.speed_exponent * log_speed
-    flux: Floats = np.exp(np.interp(wanted, log_mass, log_flux))
+def _gruen_above(limit: CriticalMass, speed_km_s: Floats) -> Floats:
+    """Gruen flux above the critical mass at these speeds, linear between tabulated ones (1e-4 above 1 km/s)."""
+    table = _gruen_by_speed(limit)
+    place = speed_km_s * (1.0 / SPEED_STEP_KM_S)
+    left = place.astype(np.intp)
+    below = table[left]
+    flux: Floats = below + (place - left) * (table[left + 1] - below)
     return flux
 
 
-@cache
-def _gruen_table() -> tuple[Floats, Floats]:
-    # Natural logarithms of mass (g) and flux; linear between points 0.01 apart is good to 3e-6.
-    log_mass = np.arange(-100.0, 70.0, 0.01)
-    return log_mass, np.log(gruen_flux_per_m2_s(np.exp(log_mass)))
+@lru_cache(maxsize=256)
+def _gruen_by_speed(limit: CriticalMass) -> Floats:
+    # The slowest particles only skim a face and weigh nothing; they are kept finite.
+    speed = np.maximum(np.arange(0.0, FASTEST_KM_S, SPEED_STEP_KM_S), SPEED_STEP_KM_S / 10.0)
+    mass_g = limit.at_1_km_s_g * speed**-limit.speed_exponent
+    return gruen_flux_per_m2_s(np.minimum(mass_g, HEAVIEST_G))
+
+
+@lru_cache(maxsize=8)
+def _gauss(count: int) -> tuple[Floats, Floats]:
+    nodes, weights = np.polynomial.legendre.leggauss(count)
+    return nodes, weights

@@ -55,7 +55,9 @@ def osculating_ellipse(r_km: Floats, v_km_s: Floats) -> Ellipse:
     lenz = np.cross(v_km_s, momentum) / MU_EARTH_KM3_S2 - r_km / distance
     eccentricity = float(np.linalg.norm(lenz))
     if (1.0 - eccentricity) / inverse_a < BLOCKING_RADIUS_KM:
-        raise OrbitError(f"the orbit of the state reaches the air (below {BLOCKING_RADIUS_KM:.0f} km) at perigee")
+        raise OrbitError(
+            f"the orbit of the state reaches the air (below {BLOCKING_RADIUS_KM:.0f} km) at perigee"
+        )
     perigee = lenz / eccentricity if eccentricity > 1e-12 else r_km / distance
     ahead = np.cross(momentum, perigee)
     return Ellipse(1.0 / inverse_a, eccentricity, perigee, ahead / np.linalg.norm(ahead))

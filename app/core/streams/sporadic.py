@@ -65,7 +65,10 @@ def analytic_density(v_entry_km_s: npt.ArrayLike) -> Floats:
 def analytic_speeds() -> SpeedDistribution:
     """The analytic distribution on Gauss-Legendre nodes of its three pieces (its mean is 16.86 km/s)."""
     nodes, weights = zip(
-        *(_gauss(low, high, count) for low, high, count in ((11.1, 16.3, 8), (16.3, 55.0, 12), (55.0, 72.2, 2))),
+        *(
+            _gauss(low, high, count)
+            for low, high, count in ((11.1, 16.3, 8), (16.3, 55.0, 12), (55.0, 72.2, 2))
+        ),
         strict=True,
     )
     speed = np.concatenate(nodes)
