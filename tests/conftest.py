@@ -12,6 +12,7 @@ from sqlalchemy.engine import URL
 from app.settings import Settings, load_settings
 from app.store.session import Store, open_store
 from tests.databases import PostgresqlTemplate, SqliteTemplate, postgresql_server
+from tests.nursery import Nursery, open_nursery
 
 
 @pytest.fixture(scope="session")
@@ -25,6 +26,12 @@ def postgresql_template() -> Iterator[PostgresqlTemplate]:
         template = PostgresqlTemplate(server)
         yield template
         template.close()
+
+
+@pytest.fixture(scope="session")
+def nursery() -> Iterator[Nursery]:
+    with open_nursery() as opened:
+        yield opened
 
 
 @pytest.fixture(params=["sqlite", "postgresql"])

@@ -11,10 +11,13 @@ from typing import Any
 
 from app.core.orbit.elements import MeanElements
 from app.core.spacecraft.model import Criterion, CriterionKind, Face, Policy, Spacecraft
+from app.core.streams.model import Catalogue, CatalogueEntry, Component, Stream
 from app.pipeline import Registered, RunInputs, SatelliteResult
 
 AS_OF_UNIX_S = 1_786_320_000.0  # 2026-08-10T00:00:00Z
 DAY_S = 86_400.0
+STREAM = Stream("PER", "Perseids", (Component("main", 140.0, 100.0, 0.2, 0.2),), 2.2, 59.1, 48.0, 58.0)
+CATALOGUE = Catalogue((CatalogueEntry("PER", "Perseids", "A", True, None, STREAM, ()),), "d" * 64)
 
 
 def spacecraft(satellite_id: str = "kestrel-1", name: str = "Kestrel", ready_at: float = 1.5) -> Spacecraft:

@@ -6,7 +6,7 @@ from dataclasses import dataclass
 from datetime import datetime
 from typing import Any
 
-from sqlalchemy import Select, func, select, tuple_
+from sqlalchemy import Select, select, tuple_
 from sqlalchemy.orm import Session
 
 from app.errors import NotFoundError
@@ -94,11 +94,12 @@ def _filtered(wanted: AdvisoryFilter) -> Select[Revision, str]:
         if value is not None:
             statement = statement.where(column == value)
     if wanted.changed_since is not None:
+        # Later changes have later times, so that the first one tells where to start reading. By the time alone,
+        # a poll that finds nothing would walk through everything.
         since = (Revision.status != "superseded") & (Revision.changed_at >= wanted.changed_since)
-        # Where to start reading; without it, a poll that finds nothing would walk through everything. The + 0
-        # keeps SQLite from looking for the least number along the index of numbers instead of that of times.
-        first = select(func.min(Revision.change_seq + 0)).where(since).scalar_subquery()
-        statement = statement.where(since, Revision.change_seq >= first)
+        by_time = Revision.changed_at, Revision.change_seq
+        first = select(Revision.change_seq).where(since).order_by(*by_time).limit(1).scalar_subquery()
+        statement = statement.where(Revision.change_seq >= first)
     return statement
 
 

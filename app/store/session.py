@@ -18,6 +18,7 @@ from sqlalchemy import Connection, Engine, create_engine, event, text
 from sqlalchemy.engine import URL
 from sqlalchemy.exc import DBAPIError, OperationalError
 from sqlalchemy.orm import Session
+from sqlalchemy.pool import PoolResetState
 
 from app.errors import ConflictError, SettingsError
 from app.settings import Settings
@@ -105,6 +106,7 @@ def open_store(settings: Settings) -> Store:
         engine, "connect", _prepare_sqlite if engine.dialect.name == "sqlite" else _prepare_postgresql
     )
     event.listen(engine, "begin", _begin)
+    event.listen(engine, "reset", _leave_no_transaction)
     try:
         with engine.connect() as connection:
             connection.execute(text("SELECT 1"))
@@ -140,6 +142,13 @@ def _begin(connection: Connection) -> None:
         connection.exec_driver_sql("BEGIN IMMEDIATE" if writing else "BEGIN")
     elif writing:
         connection.exec_driver_sql(f"SELECT pg_advisory_xact_lock({WRITER_LOCK})")
+
+
+def _leave_no_transaction(connection: Any, _record: object, state: PoolResetState) -> None:
+    # A COMMIT that fails (a full disk) leaves its transaction open. SQLAlchemy takes it for ended and puts the
+    # connection back into the pool, where it would keep every other writer out.
+    if not state.terminate_only:
+        connection.rollback()
 
 
 def _is_busy(error: OperationalError) -> bool:

@@ -82,7 +82,7 @@ def publish(store: Store, run: RunRecord, *, clock: Clock = utc_now) -> RunRecor
             failed=_count(session, run.id, "failed"),
             revisions_new=_staged_count(session, run.id),
         )
-        _move(session, run.id, change_seq, now)
+        _move(session, run.id, change_seq, _after_all_others(session, now))
         return get_run(session, run.id)
 
 
@@ -104,7 +104,7 @@ def drop_satellite(
     heads = [head for _, head in _heads(session, satellite_id, as_of_unix_s, [])]
     revisions = withdrawals(heads, as_of_unix_s, REMOVED)
     _supersede(session, [draft.advisory_id for draft in revisions])
-    extra = {"change_seq": change_seq, "changed_at": now}
+    extra = {"change_seq": change_seq, "changed_at": _after_all_others(session, now)}
     _insert(session, Revision, satellite_id, None, revisions, extra)
 
 
@@ -202,6 +202,12 @@ def _move(session: Session, run_id: str, change_seq: int, now: datetime) -> None
     rows = select(*columns, *marks).where(Staged.run_id == run_id)
     session.execute(insert(Revision).from_select([*REVISION_COLUMNS, "change_seq", "changed_at"], rows))
     session.execute(delete(Staged).where(Staged.run_id == run_id), execution_options=UNSYNCHRONISED)
+
+
+def _after_all_others(session: Session, now: datetime) -> datetime:
+    """Never date a change before an earlier one, even if the clock was set back: a poll would miss it."""
+    latest = session.scalar(select(func.max(Revision.changed_at)).where(Revision.status != "superseded"))
+    return now if latest is None else max(now, latest)
 
 
 def _supersede(session: Session, advisory_ids: Any) -> None:
