@@ -42,13 +42,14 @@ def propagate(elements: Sequence[MeanElements], grid: TimeGrid, count: int | Non
 
 def first_failure(ephemeris: Ephemeris, satellite: int, unix_s: Floats) -> str | None:
     """Say in words why and when a satellite cannot be used at the first ``len(unix_s)`` instants, else None."""
-    count = len(unix_s)
-    bad = np.flatnonzero(ephemeris.error[satellite, :count])
-    if len(bad):
-        code = int(ephemeris.error[satellite, bad[0]])
-        why = SGP4_ERRORS.get(code, "unknown error")
-        return f"SGP4 error {code} at {format_utc(unix_s[bad[0]])}: {why}"
-    low = np.flatnonzero(np.linalg.norm(ephemeris.r_km[satellite, :count], axis=-1) < BLOCKING_RADIUS_KM)
-    if len(low):
-        return f"below {BLOCKING_RADIUS_KM:.0f} km (100 km of air) at {format_utc(unix_s[low[0]])}: decaying"
-    return None
+    error = ephemeris.error[satellite, : len(unix_s)]
+    distance_km = np.linalg.norm(ephemeris.r_km[satellite, : len(unix_s)], axis=-1)
+    unusable = (error != 0) | (distance_km < BLOCKING_RADIUS_KM)
+    if not unusable.any():
+        return None
+    first = int(np.argmax(unusable))
+    when = format_utc(unix_s[first])
+    if error[first]:
+        code = int(error[first])
+        return f"SGP4 error {code} at {when}: {SGP4_ERRORS.get(code, 'unknown error')}"
+    return f"below {BLOCKING_RADIUS_KM:.0f} km (100 km of air) at {when}: decaying"
