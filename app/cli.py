@@ -3,40 +3,69 @@
 from __future__ import annotations
 
 import argparse
+import importlib
+import io
 import logging
 import os
+import signal
 import sys
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterator, Sequence
+from contextlib import contextmanager
 from pathlib import Path
+from types import FrameType
+
+from sqlalchemy.exc import SQLAlchemyError
 
 from app import __version__
-from app.commands import compute, demo, load, migrate, serve, trial
+from app.commands.files import os_problem
 from app.core.advice.advisory import CAUTION
 from app.core.sky.times import parse_utc
 from app.errors import FieldError, StonechatError
 
 DEFAULT_PORT = 8750
 DEFAULT_HOST = "127.0.0.1"
-INTERRUPTED = 130  # as shells report it
+# As shells report a program that a signal ended: 128 and the signal's number.
+INTERRUPTED = 130
+TERMINATED = 143
+READER_GONE = 141
 
 
-def main(arguments: Sequence[str] | None = None) -> int:
+class Terminated(KeyboardInterrupt):
+    """SIGTERM: a service manager asks us to stop; treated like Ctrl-C, so that everything is put away."""
+
+
+def main(argv: Sequence[str] | None = None) -> int:
     """Run one command and return its exit status."""
-    options = build_parser().parse_args(arguments)
-    logging.basicConfig(
-        format="%(levelname)s %(name)s: %(message)s", level=logging.WARNING, stream=sys.stderr
-    )
-    command: Callable[[argparse.Namespace], int] = options.command
+    options = build_parser().parse_args(argv)
+    logging.basicConfig(format="%(levelname)s %(name)s: %(message)s", level=logging.WARNING)
     try:
-        return command(options)
+        with _stoppable():
+            return _run(options)
+    except BrokenPipeError:
+        return _reader_gone()
+    except Terminated:
+        return TERMINATED
+    except KeyboardInterrupt:
+        print("stonechat: interrupted", file=sys.stderr)
+        return INTERRUPTED
+
+
+def _run(options: argparse.Namespace) -> int:
+    if isinstance(sys.stdout, io.TextIOWrapper):
+        sys.stdout.reconfigure(errors="backslashreplace")  # a name must not stop an ASCII-only terminal
+    command: Callable[[argparse.Namespace], int] = importlib.import_module(options.module).run
+    try:
+        status = command(options)
+        sys.stdout.flush()  # here, where a reader that has gone is dealt with
+        return status
     except StonechatError as refusal:
         return _refuse(refusal.detail)
+    except SQLAlchemyError as error:
+        return _refuse(f"the database failed: {getattr(error, 'orig', None) or error}")
+    except BrokenPipeError:
+        raise
     except OSError as error:
-        if isinstance(error, BrokenPipeError):
-            return _reader_gone()
-        return _refuse(f"{error.filename or 'system'}: {error.strerror or error}")
-    except KeyboardInterrupt:
-        return INTERRUPTED
+        return _refuse(os_problem(error))
 
 
 def build_parser() -> argparse.ArgumentParser:
@@ -49,47 +78,41 @@ def build_parser() -> argparse.ArgumentParser:
     parser.add_argument("--version", action="version", version=f"stonechat {__version__}")
     commands = parser.add_subparsers(title="commands", required=True, metavar="COMMAND")
 
-    one = _command(commands, "demo", demo.run, "compute and show an invented fleet, then serve it")
+    one = _command(commands, "demo", "compute and show an invented fleet, then serve it")
     one.add_argument("--once", action="store_true", help="stop after the printed outlook")
     one.add_argument("--port", type=_port, default=DEFAULT_PORT, help="port of the API (default %(default)s)")
-    one.add_argument(
-        "--dir", type=Path, help="keep the demo's database in this folder (default: a temporary one)"
-    )
+    one.add_argument("--dir", type=Path, help="keep the demo's database here (default: a temporary folder)")
 
-    one = _command(commands, "load", load.run, "take satellites and orbits from files")
+    one = _command(commands, "load", "take satellites and orbits from files")
     one.add_argument("files", nargs="+", type=Path, metavar="FILE", help="fleet (TOML, JSON), OMM or TLE")
     _add_dir(one)
 
-    one = _command(
-        commands, "compute", compute.run, "compute all registered satellites and publish the advisories"
-    )
+    one = _command(commands, "compute", "compute the registered satellites and publish the advisories")
     one.add_argument("--as-of", type=_moment, metavar="T", help="compute as of this time (default: now)")
-    one.add_argument("--satellite", action="append", metavar="ID", help="only this one; may be repeated")
+    one.add_argument(
+        "--satellite", nargs="+", action="extend", metavar="ID", help="only these (default: all)"
+    )
     _add_dir(one)
 
-    one = _command(commands, "trial", trial.run, "assess one attitude at given states; needs no database")
+    one = _command(commands, "trial", "assess one attitude at given states; needs no database")
     one.add_argument("file", type=Path, metavar="FILE.json", help="the request; - reads standard input")
 
-    one = _command(commands, "serve", serve.run, "serve the API and compute the runs asked for")
+    one = _command(commands, "serve", "serve the API and compute the runs asked for")
     one.add_argument("--port", type=_port, default=DEFAULT_PORT, help="(default %(default)s)")
     one.add_argument("--host", default=DEFAULT_HOST, help="address to listen on (default %(default)s)")
     _add_dir(one)
 
-    one = _command(commands, "migrate", migrate.run, "bring the database to the newest schema")
-    _add_dir(one)
+    _add_dir(_command(commands, "migrate", "bring the database to the newest schema"))
     return parser
 
 
 def _command(
-    commands: argparse._SubParsersAction[argparse.ArgumentParser],
-    name: str,
-    run: Callable[[argparse.Namespace], int],
-    summary: str,
+    commands: argparse._SubParsersAction[argparse.ArgumentParser], name: str, summary: str
 ) -> argparse.ArgumentParser:
-    parser = commands.add_parser(
-        name, help=summary, description=f"{summary[0].upper()}{summary[1:]}.", epilog=CAUTION
-    )
-    parser.set_defaults(command=run)
+    description = f"{summary[0].upper()}{summary[1:]}."
+    parser = commands.add_parser(name, help=summary, description=description, epilog=CAUTION)
+    # Imported when it is called: `trial` need not wait for the server's libraries, nor `--help` for any.
+    parser.set_defaults(module=f"app.commands.{name}")
     return parser
 
 
@@ -100,8 +123,8 @@ def _add_dir(parser: argparse.ArgumentParser) -> None:
 
 
 def _port(text: str) -> int:
-    if not (text.isascii() and text.isdigit() and 0 < int(text) < 65536):
-        raise argparse.ArgumentTypeError(f"'{text}' is not a port between 1 and 65535")
+    if not (text.isascii() and text.isdigit() and len(text) <= 5 and 0 < int(text) < 65536):
+        raise argparse.ArgumentTypeError(f"{text!r} is not a port between 1 and 65535")
     return int(text)
 
 
@@ -112,6 +135,20 @@ def _moment(text: str) -> float:
         raise argparse.ArgumentTypeError(error.problem) from None
 
 
+@contextmanager
+def _stoppable() -> Iterator[None]:
+    """Turn SIGTERM into an exception, so that folders are removed and a run under way is marked."""
+
+    def stop(_number: int, _frame: FrameType | None) -> None:
+        raise Terminated
+
+    before = signal.signal(signal.SIGTERM, stop)
+    try:
+        yield
+    finally:
+        signal.signal(signal.SIGTERM, before)
+
+
 def _refuse(reason: str) -> int:
     print(f"stonechat: {' '.join(reason.split())}", file=sys.stderr)
     return 1
@@ -120,4 +157,8 @@ def _refuse(reason: str) -> int:
 def _reader_gone() -> int:
     # The program that read our output has ended; the interpreter must not complain when it flushes at exit.
     os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
-    return 1
+    return READER_GONE
+
+
+if __name__ == "__main__":
+    sys.exit(main())

@@ -45,11 +45,16 @@ def shown_on(bar: tqdm[Any]) -> Progress:
 def report(store: Store, record: RunRecord) -> None:
     """Print the outcome of a run, and why any satellite could not be computed."""
     print(
-        f"run {record.id} published: {record.computed} satellites computed, {record.failed} failed, "
-        f"{record.revisions_new} new advisory revisions"
+        f"run {record.id} published: {counted(record.computed, 'satellite')} computed, {record.failed} failed, "
+        f"{counted(record.revisions_new, 'new advisory revision')}"
     )
-    if record.failed:
-        with store.read() as session:
-            for each in run_satellites(session, record.id, limit=record.satellites_total):
-                if each.state == "failed":
-                    print(f"  {each.satellite_id}: {each.reason}")
+    if record.satellites_total == 0:
+        print("no satellite is registered; give some with `stonechat load`")
+    with store.read() as session:
+        for each in run_satellites(session, record.id, limit=max(record.failed, 1), state="failed"):
+            print(f"  {each.satellite_id}: {each.reason}")
+
+
+def counted(count: int, noun: str) -> str:
+    """``1 satellite``, ``2 satellites``."""
+    return f"{count} {noun}" if count == 1 else f"{count} {noun}s"

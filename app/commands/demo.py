@@ -4,18 +4,20 @@ from __future__ import annotations
 
 import argparse
 import shutil
+import socket
 import tempfile
 import tomllib
-from collections.abc import Iterator
-from contextlib import contextmanager
+from collections.abc import Iterator, Sequence
+from contextlib import ExitStack, contextmanager
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
+from app.catalogue_file import load_catalogue
 from app.commands.compute import progress_bar, shown_on
 from app.commands.load import load_files
-from app.commands.outlook import Satellite, Scenario, outlook_lines
-from app.commands.serve import serve
+from app.commands.outlook import outlook_lines
+from app.commands.scenario import Satellite, Scenario
 from app.core.sky.times import format_utc, parse_utc
 from app.errors import SettingsError, StonechatError
 from app.jobs.run import run_once
@@ -26,7 +28,10 @@ from app.store.fleet import list_satellites
 from app.store.runs import RunRecord, run_satellites
 from app.store.session import Store, open_store
 
-MARK = "stonechat-demo"  # this empty file in a folder says that its database may be replaced
+MARK = "stonechat-demo.txt"  # in a folder, it says that the database there may be replaced
+MARK_TEXT = (
+    "The database in this folder belongs to the demo; every `stonechat demo --dir` here makes it anew.\n"
+)
 PAGE = 500
 HOST = "127.0.0.1"
 
@@ -42,15 +47,18 @@ class DemoFiles:
 def run(options: argparse.Namespace) -> int:
     """Compute and print the outlook of the invented fleet; then serve it, unless told to stop."""
     files = demo_files(resource_dir("data_demo"))
-    with _folder(options.dir) as folder:
-        settings = load_settings(dir=folder, database_url="")
-        settings = settings.model_copy(update={"database_url": ""})
-        with open_store(settings) as store:
-            record = _prepare(store, settings, files)
-            for line in outlook_lines(files.scenario, _fleet(store, record)):
-                print(line)
-            if not options.once:
-                _serve(store, settings, files.scenario, options.port)
+    with ExitStack() as stack:
+        listener = None if options.once else stack.enter_context(_listen(options.port))
+        settings = _settings(stack.enter_context(_folder(options.dir)))
+        store = stack.enter_context(open_store(settings))
+        members = list(_fleet(store, _prepare(store, settings, files)))
+        for line in outlook_lines(files.scenario, members):
+            print(line)
+        example = _example(files.scenario, members)
+        if listener is None:
+            _say_what_next(options.port, example)
+        else:
+            _serve(store, settings, files.scenario, listener, example)
     return 0
 
 
@@ -62,8 +70,14 @@ def demo_files(folder: Path) -> DemoFiles:
         as_of_unix_s=parse_utc(values["as_of"], "as_of"),
         utc_offset_hours=values["utc_offset_hours"],
         outlook_days=values["outlook_days"],
+        maxima_deg={s.code: s.components[0].solar_longitude_peak_deg for s in load_catalogue().streams},
     )
     return DemoFiles(scenario, (folder / "fleet.toml", *sorted((folder / "orbits").iterdir())))
+
+
+def _settings(folder: Path) -> Settings:
+    """An SQLite file in the folder, whatever database the environment names; eight satellites need no workers."""
+    return load_settings(dir=folder, database_url="", executor="serial")
 
 
 @contextmanager
@@ -74,7 +88,7 @@ def _folder(wanted: Path | None) -> Iterator[Path]:
         try:
             yield folder
         finally:
-            shutil.rmtree(folder, ignore_errors=True)
+            shutil.rmtree(folder)
         return
     wanted.mkdir(parents=True, exist_ok=True)
     if (wanted / SQLITE_FILE).exists() and not (wanted / MARK).exists():
@@ -83,34 +97,62 @@ def _folder(wanted: Path | None) -> Iterator[Path]:
         )
     for leftover in wanted.glob(f"{SQLITE_FILE}*"):
         leftover.unlink()
-    (wanted / MARK).touch()
+    (wanted / MARK).write_text(MARK_TEXT, encoding="utf-8")
     yield wanted
 
 
 def _prepare(store: Store, settings: Settings, files: DemoFiles) -> RunRecord:
     store.migrate()
-    report = load_files(store, files.paths)
-    if report.refused:
-        raise StonechatError(f"the demo's own data was refused: {report.refused[0]}")
+    refused = [line.text for line in load_files(store, files.paths) if line.refused]
+    if refused:
+        raise StonechatError(f"the demo's own data was refused: {refused[0]}")
     with progress_bar() as bar:
         return run_once(store, settings, files.scenario.as_of_unix_s, progress=shown_on(bar))
 
 
 def _fleet(store: Store, record: RunRecord) -> Iterator[Satellite]:
     with store.read() as session:
-        members = list_satellites(session, limit=PAGE)
         failed = {
             e.satellite_id: e.reason for e in run_satellites(session, record.id, limit=PAGE) if e.reason
         }
-        for member in members:
+        for member in list_satellites(session, limit=PAGE):
             found = list_advisories(session, AdvisoryFilter(satellite=member.id), limit=PAGE)
             bodies = tuple(each.body for each in found)
-            yield Satellite(member.id, member.spacecraft.name, failed.get(member.id), bodies)
+            craft = member.spacecraft
+            yield Satellite(craft.id, craft.name, craft.policy.min_lee_s, failed.get(craft.id), bodies)
 
 
-def _serve(store: Store, settings: Settings, scenario: Scenario, port: int) -> None:
-    base = f"http://{HOST}:{port}"
-    print(f"\nServing {base} with the clock held at {format_utc(scenario.as_of_unix_s)}; Ctrl-C ends it. Try")
-    print(f"  curl -s '{base}/v1/advisories?level=shelter'")
-    print(f"  curl -s '{base}/v1/satellites'")
-    serve(settings, store, HOST, port, clock=lambda: scenario.as_of_unix_s)
+def _example(scenario: Scenario, members: Sequence[Satellite]) -> str:
+    """The id of the most urgent advisory."""
+    ranked = [each for member in scenario.by_urgency(list(members)) for each in scenario.urgent(member)]
+    if not ranked:
+        raise StonechatError("the demo's scenario gives nothing to act on; its data_demo folder was changed")
+    return str(ranked[0]["id"])
+
+
+def _say_what_next(port: int, example: str) -> None:
+    print("\nNext: `stonechat demo` prints this, then serves the API. Ask it, for instance:")
+    print(f"  curl -s http://{HOST}:{port}/v1/advisories/{example}")
+
+
+@contextmanager
+def _listen(port: int) -> Iterator[socket.socket]:
+    from app.commands.serve import (
+        listen,
+    )  # the server's libraries take a second, which --once need not wait for
+
+    with listen(HOST, port) as listener:
+        yield listener
+
+
+def _serve(
+    store: Store, settings: Settings, scenario: Scenario, listener: socket.socket, example: str
+) -> None:
+    from app.commands.serve import address, serve
+
+    base = address(listener)
+    print(f"\nServing {base} with the clock held at {format_utc(scenario.as_of_unix_s)}.")
+    print("Ctrl-C ends it. In another terminal, try")
+    print(f"  curl -s {base}/v1/advisories/{example}")
+    print(f"  curl -s '{base}/v1/advisories?level=shelter'", flush=True)
+    serve(settings, store, listener, clock=lambda: scenario.as_of_unix_s)

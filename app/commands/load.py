@@ -3,125 +3,164 @@
 from __future__ import annotations
 
 import argparse
+import re
 from collections.abc import Iterator, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from pathlib import Path
 
 from sqlalchemy.orm import Session
 
+from app.commands.files import os_problem, read_file
+from app.commands.register import Register, read_register
 from app.core.orbit.elements import MeanElements
 from app.core.sky.times import format_utc
-from app.errors import FileError, InputError
+from app.core.spacecraft.model import Spacecraft
+from app.errors import ConflictError, FileError, InputError, NotFoundError
 from app.formats.fleet import read_fleet
 from app.formats.orbit import read_orbits
 from app.settings import load_settings
-from app.store.fleet import list_satellites, put_orbit, put_satellite
+from app.store.fleet import current_orbit, put_orbit, put_satellite
 from app.store.session import Store, open_store
 
-PAGE = 1000
 FORMATS = {".json": "omm-json", ".xml": "omm-xml", ".kvn": "omm-kvn", ".csv": "omm-csv", ".tle": "tle"}
+FLEET = re.compile(rb'"satellites"|^\s*(\[\[\s*satellites\s*\]\]|satellites\s*=)', re.MULTILINE)
+BYTE_ORDER_MARK = b"\xef\xbb\xbf"
 
 
-@dataclass
-class Report:
-    """What a load took and what it refused, a line each."""
+@dataclass(frozen=True)
+class Line:
+    """What became of one satellite, orbit or line of a file."""
 
-    taken: list[str] = field(default_factory=list)
-    refused: list[str] = field(default_factory=list)
+    refused: bool
+    text: str
 
 
 def run(options: argparse.Namespace) -> int:
     """Load the files in order; 1 when anything in them was refused."""
     settings = load_settings(dir=options.dir)
+    refused = total = 0
     with open_store(settings) as store:
         store.require_head()
-        report = load_files(store, options.files)
-    for line in report.taken:
-        print(line)
-    for line in report.refused:
-        print(f"refused: {line}")
-    if report.refused:
-        raise InputError(
-            f"refused {len(report.refused)} of what was given (listed above); the rest was taken"
-        )
+        for line in load_files(store, options.files):
+            print(f"refused: {line.text}" if line.refused else line.text)
+            refused, total = refused + line.refused, total + 1
+    if refused:
+        raise InputError(f"refused {refused} of {total} (listed above); the rest is in the database")
     return 0
 
 
-def load_files(store: Store, paths: Sequence[Path]) -> Report:
-    """Load files in order. Of each file, what is right is stored by one transaction; the rest is reported."""
-    report = Report()
+def load_files(store: Store, paths: Sequence[Path]) -> Iterator[Line]:
+    """Load files in order and say what became of their content.
+
+    What is right in a file is stored by one transaction; a file that cannot be read is a refused line.
+    """
     for path in paths:
-        data, source = path.read_bytes(), str(path)
-        if is_fleet(path, data):
-            _load_fleet(store, data, source, report)
-        else:
-            _load_orbits(store, data, path, report)
-    return report
+        try:
+            data = read_file(path)
+            load = _load_fleet if is_fleet(path, data) else _load_orbits
+            yield from load(store, data, path)
+        except OSError as error:
+            yield Line(True, os_problem(error))
+        except ConflictError as error:
+            yield Line(True, f"{path}: {error.detail}")
 
 
 def is_fleet(path: Path, data: bytes) -> bool:
-    """Whether a file holds satellites rather than orbits: TOML, or a JSON object with ``satellites``."""
-    return path.suffix.lower() == ".toml" or (data.lstrip().startswith(b"{") and b'"satellites"' in data)
+    """Whether a file holds satellites rather than orbits alone: by its ending, else by its beginning."""
+    if path.suffix.lower() == ".toml":
+        return True
+    start = data.removeprefix(BYTE_ORDER_MARK).lstrip()
+    found = FLEET.search(start)
+    # JSON and TOML may be laid out at will; the list of satellites is the only thing a fleet file holds.
+    return found is not None and (start.startswith(b"{") or found.start() == 0 or start.startswith(b"#"))
 
 
-def _load_fleet(store: Store, data: bytes, source: str, report: Report) -> None:
-    try:
-        fleet = read_fleet(data, source)
-    except InputError as error:
-        report.refused.append(error.detail)
-        return
+def _load_fleet(store: Store, data: bytes, path: Path) -> list[Line]:
+    fleet = read_fleet(data, str(path))
+    lines = [Line(True, refusal.detail) for refusal in fleet.refused]
+    if not fleet.satellites:
+        return lines
+    taken: list[Line] = []
     with store.write() as session:
+        register = read_register(session)
         for spacecraft, elements in fleet.satellites:
-            new = put_satellite(session, spacecraft)
-            report.taken.append(
-                f"{source}: satellite '{spacecraft.id}' {'registered' if new else 'is up to date'}"
-            )
+            taken.append(_put_satellite(session, register, spacecraft, path))
             if elements is not None:
-                _put(session, spacecraft.id, elements, "fleet", source, report)
-    report.refused += [refusal.detail for refusal in fleet.refused]
+                taken.append(_put_orbit(session, spacecraft.id, elements, "fleet", path))
+    return taken + lines
 
 
-def _load_orbits(store: Store, data: bytes, path: Path, report: Report) -> None:
+def _load_orbits(store: Store, data: bytes, path: Path) -> list[Line]:
     results = read_orbits(data, str(path))
-    report.refused += [each.detail for each in results if isinstance(each, FileError)]
-    found = sorted((each for each in results if isinstance(each, MeanElements)), key=lambda e: e.epoch_unix_s)
+    refused = [Line(True, each.detail) for each in results if isinstance(each, FileError)]
+    found = [each for each in results if isinstance(each, MeanElements)]
     if not found:
-        return
+        return refused
     form = FORMATS.get(path.suffix.lower(), "text")
+    taken: list[Line] = []
     with store.write() as session:
-        owners = dict(_names(session))
-        for elements in found:  # by epoch: of several sets for one satellite the newest stays in use
-            satellite_id = owners.get(elements.object_name.casefold()) or owners.get(
-                elements.object_id.casefold()
-            )
-            if satellite_id is None:
-                report.refused.append(_unmatched(elements, str(path)))
-            else:
-                _put(session, satellite_id, elements, form, str(path), report)
+        owned, unowned = _by_owner(read_register(session), found, path)
+        for satellite_id, sets in owned.items():
+            # Of several sets for one satellite the newest is used; stored one after the other, the older
+            # ones would come and go each time the file is loaded.
+            *older, newest = sorted(sets, key=lambda each: each.epoch_unix_s)
+            taken.append(_put_orbit(session, satellite_id, newest, form, path))
+            taken += [_passed_over(satellite_id, each, path) for each in older]
+    return taken + unowned + refused
 
 
-def _names(session: Session) -> Iterator[tuple[str, str]]:
-    """What an orbit file may call each registered satellite: its name or its id."""
-    last: str | None = None
-    while page := list_satellites(session, after=last, limit=PAGE):
-        for record in page:
-            yield record.spacecraft.name.casefold(), record.id
-            yield record.id.casefold(), record.id
-        last = page[-1].id
+def _by_owner(
+    register: Register, found: Sequence[MeanElements], path: Path
+) -> tuple[dict[str, list[MeanElements]], list[Line]]:
+    owned: dict[str, list[MeanElements]] = {}
+    unowned: list[Line] = []
+    for elements in found:
+        owners = register.owners(elements)
+        if len(owners) == 1:
+            owned.setdefault(owners[0], []).append(elements)
+        else:
+            unowned.append(_unmatched(elements, owners, path))
+    return owned, unowned
 
 
-def _put(
-    session: Session, satellite_id: str, elements: MeanElements, form: str, source: str, report: Report
-) -> None:
+def _put_satellite(session: Session, register: Register, spacecraft: Spacecraft, path: Path) -> Line:
+    before = register.satellites.get(spacecraft.id)
+    put_satellite(session, spacecraft)
+    state = "registered" if before is None else "unchanged" if before == spacecraft else "replaced"
+    return Line(False, f"{path}: satellite '{spacecraft.id}' {state}")
+
+
+def _put_orbit(session: Session, satellite_id: str, elements: MeanElements, form: str, path: Path) -> Line:
+    before = _epoch_in_use(session, satellite_id)
     new = put_orbit(session, satellite_id, elements, form)
-    state = "taken" if new else "is up to date"
-    report.taken.append(
-        f"{source}: orbit of '{satellite_id}', epoch {format_utc(elements.epoch_unix_s)}, {state}"
-    )
+    state = "taken" if new else "unchanged"
+    if before is not None and before > elements.epoch_unix_s:
+        state += f"; it is OLDER than the one it replaces, of epoch {format_utc(before)}"
+    return Line(False, f"{_orbit_of(satellite_id, elements, path)} {state}")
 
 
-def _unmatched(elements: MeanElements, source: str) -> str:
-    return (
-        f"{source}: the orbit of '{elements.object_name}' ({elements.object_id or 'no id'}) fits no registered "
-        "satellite; register one whose id or name is the same, or PUT the orbit to its address"
+def _epoch_in_use(session: Session, satellite_id: str) -> float | None:
+    try:
+        return current_orbit(session, satellite_id).elements.epoch_unix_s
+    except NotFoundError:
+        return None
+
+
+def _passed_over(satellite_id: str, elements: MeanElements, path: Path) -> Line:
+    return Line(False, f"{_orbit_of(satellite_id, elements, path)} passed over: the file has a newer one")
+
+
+def _orbit_of(satellite_id: str, elements: MeanElements, path: Path) -> str:
+    return f"{path}: orbit of '{satellite_id}', epoch {format_utc(elements.epoch_unix_s)},"
+
+
+def _unmatched(elements: MeanElements, owners: Sequence[str], path: Path) -> Line:
+    orbit = f"{path}: the orbit of '{elements.object_name}' ({elements.object_id or 'no object id'})"
+    if owners:
+        return Line(
+            True, f"{orbit} fits several satellites: {', '.join(owners)}; name it by one satellite's id"
+        )
+    return Line(
+        True,
+        f"{orbit} fits no registered satellite; register one with that id or name, or rename the object in the file",
     )
