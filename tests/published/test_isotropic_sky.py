@@ -23,6 +23,7 @@ MASS_G = 1e-6
 DENSE = (64, 128)  # quadrature of the sky: polar, azimuth
 STRAIGHT_KM_S = 1e6  # so fast that the Earth does not bend it
 FAR_KM = 1e10  # so far that the Earth does not hide anything
+UP_DOWN_LEVEL = [(1.0, 0.0, 0.0), (-1.0, 0.0, 0.0), (0.0, 1.0, 0.0)]  # at a place on the x axis
 one_permille = 1e-3
 numerical = 1e-4
 last_digit = 1.2e-5  # a table printed to five figures
@@ -95,13 +96,25 @@ def test_the_sporadic_sky_equals_streams_averaged_over_all_radiants(altitude_km:
     [(400.0, 1.0, 0.08656, 0.68456), (800.0, 1.0, 0.18553, 0.76548)],
 )
 def test_fixed_faces_along_straight_lines(altitude_km: float, zenith: float, nadir: float, horizon: float):
-    normals = [(1.0, 0.0, 0.0), (-1.0, 0.0, 0.0), (0.0, 1.0, 0.0)]
-    rates = face_rates(place(altitude_km), one_speed(STRAIGHT_KM_S), normals)
+    velocity, density = relative_sky(place(altitude_km), np.zeros(3), one_speed(STRAIGHT_KM_S), DENSE)
+    rates = np.maximum(-np.array(UP_DOWN_LEVEL) @ velocity, 0.0) @ density
     assert_allclose(rates, [zenith, nadir, horizon], rtol=one_permille)
+
+
+@pytest.mark.case(11)
+@pytest.mark.parametrize(
+    ("altitude_km", "share", "focusing"), [(400.0, 0.63870, 1.29404), (800.0, 0.70396, 1.27765)]
+)
+def test_fixed_faces_along_bent_lines(altitude_km: float, share: float, focusing: float):
+    # the same formulas with the half-angle that bent rays leave open: share = (1 + cos eta)/2 at 20 km/s
+    eta = np.arccos(2.0 * share - 1.0)
+    faces = np.array([1.0, np.cos(eta) ** 2, 1.0 - (eta - np.sin(eta) * np.cos(eta)) / np.pi])
+    rates = face_rates(place(altitude_km), one_speed(20.0), UP_DOWN_LEVEL)
+    assert_allclose(rates, focusing * faces, rtol=one_permille)
     # The program's own quadrature is coarser: small against a background known to 30 %.
-    of_the_free_flux = 1.5e-3
-    rates = face_rates(place(altitude_km), one_speed(STRAIGHT_KM_S), normals, nodes=FINE)
-    assert_allclose(rates, [zenith, nadir, horizon], atol=of_the_free_flux)
+    of_the_free_flux = 2e-3
+    rates = face_rates(place(altitude_km), one_speed(20.0), UP_DOWN_LEVEL, nodes=FINE)
+    assert_allclose(rates, focusing * faces, atol=of_the_free_flux)
 
 
 @pytest.mark.case(12)

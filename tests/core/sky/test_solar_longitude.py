@@ -19,11 +19,13 @@ pytestmark = pytest.mark.filterwarnings("ignore:.*dubious year")
 ten_thousandth_of_a_degree = 1e-4
 DAY_S = 86400.0
 YEARS_1970_TO_2050 = np.arange(0.0, 80 * 365.25 * DAY_S, 97.3 * DAY_S)
+# Dense enough to be taken between nodes half an hour apart.
+A_DAY_IN_2026 = 1_786_320_000.0 + np.arange(0.0, DAY_S, 420.0)
 
 
-@pytest.fixture(scope="module")
-def grid() -> TimeGrid:
-    return TimeGrid(YEARS_1970_TO_2050)
+@pytest.fixture(scope="module", params=[YEARS_1970_TO_2050, A_DAY_IN_2026], ids=["80 years", "a day"])
+def grid(request: pytest.FixtureRequest) -> TimeGrid:
+    return TimeGrid(request.param)
 
 
 @pytest.fixture(scope="module")
