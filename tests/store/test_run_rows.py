@@ -58,9 +58,9 @@ def test_a_run_may_be_of_some_satellites(store: Store) -> None:
 
 def test_a_run_of_unknown_satellites_is_refused_by_name(store: Store) -> None:
     register(store, "a")
-    with pytest.raises(NotFoundError, match="there is no satellite 'x', 'y'$"):
+    with pytest.raises(NotFoundError, match=r"there is no satellite 'x', 'y'$"):
         start_run(store, AS_OF_UNIX_S, ["a", "y", "x"])
-    with pytest.raises(NotFoundError, match="and 2 more$"):
+    with pytest.raises(NotFoundError, match=r"and 2 more$"):
         queue(store, ids=[f"x{number}" for number in range(7)])
     with store.read() as session:
         assert list_runs(session) == []

@@ -2,13 +2,14 @@ from __future__ import annotations
 
 from concurrent.futures import ThreadPoolExecutor
 from datetime import UTC, datetime, timedelta, timezone
+from pathlib import Path
 
 import pytest
 from sqlalchemy import event, select, text
-from sqlalchemy.exc import StatementError
+from sqlalchemy.exc import OperationalError, StatementError
 
 from app.errors import ConflictError
-from app.settings import Settings
+from app.settings import Settings, load_settings
 from app.store.changes import current_change, next_change
 from app.store.fleet import get_satellite, put_satellite
 from app.store.session import Store, open_store
@@ -72,6 +73,34 @@ def test_a_writer_that_waits_too_long_is_told_so(store: Store) -> None:
 
     with store.write(), pytest.raises(ConflictError, match="busy"), store.write():
         pass
+
+
+def test_a_commit_that_fails_leaves_the_database_to_the_next_writer(store: Store) -> None:
+    failures = iter([OSError("the disk is full")])
+
+    def strike(_connection: object) -> None:
+        error = next(failures, None)
+        if error is not None:
+            raise error
+
+    event.listen(store.engine, "commit", strike)
+    with pytest.raises(OSError, match="disk"), store.write() as session:
+        put_satellite(session, spacecraft("lost"))
+    with store.write() as session:
+        put_satellite(session, spacecraft("kept"))
+    with store.read() as session:
+        assert session.scalars(select(Satellite.id)).all() == ["kept"]
+
+
+def test_a_database_that_is_gone_is_not_called_busy(tmp_path: Path) -> None:
+    settings = load_settings(dir=tmp_path)
+    with open_store(settings) as store:
+        store.close()
+        for file in tmp_path.iterdir():
+            file.unlink()
+        (tmp_path / "stonechat.sqlite").mkdir()
+        with pytest.raises(OperationalError, match="unable to open"), store.write():
+            pass
 
 
 def test_eight_writers_lose_no_update(store: Store) -> None:
