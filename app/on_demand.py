@@ -105,7 +105,7 @@ def lee_windows(
     return [
         lee_window(window.start_unix_s, window.end_unix_s, codes)
         for window in plan.lee(members)
-        if window.overlaps(from_unix_s, to_unix_s) and window.duration_s >= least_s
+        if window.overlaps(from_unix_s, to_unix_s) and window.is_worth_offering(least_s)
     ]
 
 

@@ -13,7 +13,7 @@ from app.core.orbit.trust import trusted_count
 from app.core.run import Registered, RunInputs, SatelliteResult
 from app.core.streams.flux import mass_law
 from app.core.streams.sporadic import analytic_speeds
-from app.errors import OrbitError
+from app.errors import OrbitError, StonechatError
 
 __all__ = ["Registered", "RunInputs", "SatelliteResult", "compute_satellites", "exposure", "sky_of"]
 
@@ -44,6 +44,6 @@ def _marked(inputs: RunInputs, sky: RunSky, satellite: Registered) -> SatelliteR
     try:
         found = exposure(inputs, sky, satellite)
         bodies = [advisory(inputs, satellite, found.plan.end_unix_s, each) for each in found.findings()]
-    except OrbitError as refusal:
+    except StonechatError as refusal:
         return SatelliteResult(satellite.spacecraft.id, "failed", refusal.detail, ())
     return SatelliteResult(satellite.spacecraft.id, "computed", None, tuple(bodies))

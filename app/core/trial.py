@@ -83,9 +83,7 @@ def format_utc_precise(unix_s: float) -> str:
 def _check_states(trial: Trial) -> None:
     distance = np.sqrt(np.einsum("kt,kt->t", trial.r_km, trial.r_km))
     speed = np.sqrt(np.einsum("kt,kt->t", trial.v_km_s, trial.v_km_s))
-    turn = np.linalg.norm(np.cross(trial.r_km, trial.v_km_s, axis=0), axis=0)
-    plane_needed = trial.spacecraft.attitude.kind is not AttitudeLawKind.INERTIAL
-    problems = (
+    _refuse(
         (
             distance < BLOCKING_RADIUS_KM,
             "r_km",
@@ -93,24 +91,27 @@ def _check_states(trial: Trial) -> None:
         ),
         (distance > FARTHEST_KM, "r_km", f"lies beyond {FARTHEST_KM:.0f} km; the Earth's frame ends there"),
         (speed > FASTEST_KM_S, "v_km_s", f"is faster than {FASTEST_KM_S:.0f} km/s; is it in m/s?"),
-        (
-            plane_needed & (turn <= LEAST_TURN * distance * speed),
-            "v_km_s",
-            "lies along r_km, so there is no orbit plane and this attitude law is undefined; use 'inertial'",
-        ),
     )
+    if trial.spacecraft.attitude.kind is not AttitudeLawKind.INERTIAL:
+        turn = np.linalg.norm(np.cross(trial.r_km, trial.v_km_s, axis=0), axis=0)
+        undefined = "there is no orbit plane and this attitude law is undefined; use 'inertial'"
+        _refuse((turn <= LEAST_TURN * distance * speed, "v_km_s", f"lies along r_km, so {undefined}"))
+
+
+def _refuse(*problems: tuple[npt.NDArray[np.bool_], str, str]) -> None:
+    """Raise the first problem that some state (T,) has: (which states, field, what to mend)."""
     for bad, field, problem in problems:
-        if np.any(bad):
+        if bad.any():
             raise FieldError(f"states.{int(np.argmax(bad))}.{field}", problem)
 
 
 def _active(trial: Trial, grid: TimeGrid) -> tuple[Trial, StreamState]:
-    """Leave out catalogued streams that are not active at any state; a request's own streams all stay."""
+    """Leave out catalogued streams that are not active at any state, unless none is; a request's own all stay."""
     if not trial.streams:
         raise FieldError("streams", "the catalogue has no active stream; give streams of your own")
     state = stream_state(trial.streams, grid.solar_longitude_deg)
     kept = np.flatnonzero(state.zhr.max(axis=1) > 0.0)
-    if trial.own_streams or len(kept) == len(trial.streams):
+    if trial.own_streams or len(kept) in (0, len(trial.streams)):
         return trial, state
     streams = tuple(trial.streams[i] for i in kept)
     fewer = Trial(trial.spacecraft, streams, False, trial.unix_s, trial.r_km, trial.v_km_s)

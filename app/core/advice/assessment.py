@@ -94,6 +94,8 @@ def crossing_span(unix_s: Floats, values: Floats, threshold: float) -> tuple[flo
     first, last = int(above[0]), int(above[-1])
     start = _crossing(unix_s, values, threshold, first - 1, first) if first > 0 else unix_s[0]
     end = _crossing(unix_s, values, threshold, last + 1, last) if last + 1 < len(values) else unix_s[-1]
+    if not end > start:
+        start, end = unix_s[max(first - 1, 0)], unix_s[min(last + 1, len(unix_s) - 1)]
     return float(start), float(end)
 
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable
 from dataclasses import dataclass
 
@@ -27,6 +28,16 @@ class Interval:
     def duration_s(self) -> float:
         """Length in seconds."""
         return self.end_unix_s - self.start_unix_s
+
+    @property
+    def whole_seconds(self) -> tuple[int, int]:
+        """First and last whole second inside: what an operator is told."""
+        return math.ceil(self.start_unix_s), math.floor(self.end_unix_s)
+
+    def is_worth_offering(self, least_s: float) -> bool:
+        """Whether it is of some length, and of ``least_s``, in whole seconds."""
+        first, last = self.whole_seconds
+        return last > first and last - first >= least_s
 
     def overlaps(self, start_unix_s: float, end_unix_s: float) -> bool:
         """Whether the two share more than an instant."""

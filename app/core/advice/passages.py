@@ -17,8 +17,9 @@ from app.core.streams.model import Stream
 Floats = npt.NDArray[np.float64]
 DAY_S = 86400.0
 RATE_FLOOR_ZHR = 0.5  # a stream without published limits is followed until its rate falls below this
-LONGEST_SIDE_DEG = 45.0
+LONGEST_SIDE_DEG, SHORTEST_SIDE_DEG = 45.0, 0.01
 FINE_SIDE, KNOT_SIDE = 400, 12  # samples on either side of the peak
+NOTHING: Floats = np.empty((0, 0))
 CROWDING = 7.0  # how strongly fine samples crowd at the peak: 1/1500 of the mean spacing there
 
 
@@ -35,7 +36,11 @@ class Passage:
 
 
 def find_passages(streams: Sequence[Stream], from_unix_s: float, to_unix_s: float) -> list[Passage]:
-    """Passages that touch an interval, by peak time. The year in the name is that of the peak."""
+    """Passages that touch an interval, by peak time.
+
+    The year in the name is that of the peak. Within a day of New Year sidereal years are counted instead: two
+    passages may then fall into one calendar year, and no two may share a name.
+    """
     if not streams:
         return []
     first = datetime.fromtimestamp(from_unix_s, UTC).year - 1
@@ -56,17 +61,17 @@ def _passages(streams: Sequence[Stream], year: int) -> Iterator[Passage]:
     start = time_of_solar_longitude(peak_deg - rise_deg, peak - rise_deg * DAY_S)
     end = time_of_solar_longitude(peak_deg + fall_deg, peak + fall_deg * DAY_S)
     for index, stream in enumerate(streams):
-        name = f"{stream.code}-{datetime.fromtimestamp(peak[index], UTC).year}"
         times = float(start[index]), float(peak[index]), float(end[index])
-        yield Passage(index, stream.code, name, *times)
+        yield Passage(index, stream.code, f"{stream.code}-{year}", *times)
 
 
 def activity_sides_deg(stream: Stream) -> tuple[float, float]:
-    """Degrees of solar longitude before and after the peak during which a stream is followed."""
+    """Degrees of solar longitude, above zero, before and after the peak during which a stream is followed."""
     if stream.start_solar_longitude_deg is not None and stream.end_solar_longitude_deg is not None:
         before = (stream.peak_deg - stream.start_solar_longitude_deg) % 360.0
-        return before, (stream.end_solar_longitude_deg - stream.peak_deg) % 360.0
-    side = np.linspace(0.0, LONGEST_SIDE_DEG, 4501)
+        after = (stream.end_solar_longitude_deg - stream.peak_deg) % 360.0
+        return max(before, SHORTEST_SIDE_DEG), max(after, SHORTEST_SIDE_DEG)
+    side = np.arange(0.0, LONGEST_SIDE_DEG + SHORTEST_SIDE_DEG / 2.0, SHORTEST_SIDE_DEG)
     before_zhr = stream_zhr(stream, stream.peak_deg - side)
     after_zhr = stream_zhr(stream, stream.peak_deg + side)
     return _reach(side, before_zhr), _reach(side, after_zhr)
@@ -74,7 +79,7 @@ def activity_sides_deg(stream: Stream) -> tuple[float, float]:
 
 def _reach(side: Floats, zhr: Floats) -> float:
     above = np.flatnonzero(zhr >= RATE_FLOOR_ZHR)
-    return float(side[above[-1]]) if len(above) else float(side[1])
+    return max(float(side[above[-1]]), SHORTEST_SIDE_DEG) if len(above) else SHORTEST_SIDE_DEG
 
 
 @dataclass(frozen=True)
@@ -95,6 +100,8 @@ class OutlookGrid:
 
 def outlook_grid(streams: Sequence[Stream], passages: Sequence[Passage]) -> OutlookGrid:
     """Lay out the instants of an outlook, once for all satellites."""
+    if not passages:
+        return OutlookGrid((), NOTHING, NOTHING, TimeGrid(np.empty(0)), NOTHING, np.empty((3, 0, 0)))
     fine = _spread(passages, np.sinh(CROWDING * np.linspace(0.0, 1.0, FINE_SIDE + 1)) / np.sinh(CROWDING))
     knot = _spread(passages, np.linspace(0.0, 1.0, KNOT_SIDE + 1))
     longitude = _interpolated_longitude(fine)

@@ -11,7 +11,7 @@ from app.core.advice.events import Interval
 from app.core.advice.factors import Baseline
 from app.core.advice.run_sky import PlanSky
 from app.core.advice.windows import Track, lee_intervals
-from app.core.exposure.faces import Places, hazard_rates, stream_focusing
+from app.core.exposure.faces import Places, criterion_rows, hazard_rates, stream_focusing
 from app.core.spacecraft.model import Spacecraft
 
 Floats = npt.NDArray[np.float64]
@@ -37,6 +37,8 @@ class PlanExposure:
     def rates(self) -> Floats:
         """Hazard rates (C, S, T), per m2 and second."""
         count = len(self.track.unix_s)
+        if not self.plan.indices:
+            return np.empty((len(criterion_rows(self.spacecraft)), 0, count))
         places = Places(self.track.r_km, self.track.v_km_s, self.plan.grid.sun_km[:count].T)
         zhr = self.plan.state.zhr[:, :count]
         return hazard_rates(self.spacecraft, self.plan.streams, self._downstream, places, zhr)
@@ -44,6 +46,8 @@ class PlanExposure:
     @cached_property
     def margin_and_cap(self) -> tuple[Floats, npt.NDArray[np.bool_]]:
         """Shelter margin (positive where hidden) and cap mark, (S, T) each."""
+        if not self.plan.indices:
+            return np.empty((0, len(self.track.unix_s))), np.empty((0, len(self.track.unix_s)), dtype=bool)
         focused = stream_focusing(self.plan.streams, self._downstream, self.track.r_km)
         return focused.margin, focused.capped
 

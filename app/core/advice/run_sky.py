@@ -78,7 +78,13 @@ def plan_sky(
     touched = {p.stream for p in passages if p.end_unix_s > start_unix_s and p.start_unix_s < stop_unix_s}
     indices = tuple(sorted(touched))
     active = streams.subset(indices)
-    return PlanSky(grid, indices, active, stream_state(active.streams, grid.solar_longitude_deg))
+    return PlanSky(grid, indices, active, _state(active.streams, grid))
+
+
+def _state(streams: Sequence[Stream], grid: TimeGrid) -> StreamState:
+    if not streams:  # a quiet week
+        return StreamState(np.empty((0, len(grid))), np.empty((3, 0, len(grid))))
+    return stream_state(streams, grid.solar_longitude_deg)
 
 
 @lru_cache(maxsize=2)

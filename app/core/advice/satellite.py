@@ -60,6 +60,8 @@ class SatelliteExposure:
 
     def findings(self) -> list[Finding]:
         """Judge every passage that still has two instants ahead of it."""
+        if not self.sky.passages:
+            return []
         rates, capped = outlook_rates(self.sky, self.spacecraft, self.orbit)
         found = []
         for index, passage in enumerate(self.sky.passages):
@@ -110,7 +112,7 @@ class SatelliteExposure:
             (window, codes)
             for window in self.plan.lee(members)
             if window.overlaps(cover.start_unix_s, cover.end_unix_s)
-            and window.duration_s >= self.spacecraft.policy.min_lee_s
+            and window.is_worth_offering(self.spacecraft.policy.min_lee_s)
         )
 
 
