@@ -5,7 +5,7 @@ from __future__ import annotations
 import textwrap
 from collections.abc import Iterable, Iterator, Sequence
 
-from app.commands.outlook_rows import WIDTH, act_on_rows, passage_block, steady_table
+from app.commands.outlook_rows import WIDTH, act_on_rows, cut, passage_block, steady_table
 from app.commands.scenario import Satellite, Scenario
 from app.core.advice.advisory import CAUTION
 from app.core.sky.times import format_utc
@@ -44,7 +44,7 @@ def _head(scenario: Scenario) -> Iterator[str]:
 
 def _satellite(scenario: Scenario, satellite: Satellite) -> Iterator[str]:
     title = satellite.name if satellite.name == satellite.id else f"{satellite.name} ({satellite.id})"
-    yield f"== {textwrap.shorten(title, WIDTH - 6, placeholder='...')} ".ljust(WIDTH, "=")
+    yield f"== {cut(title, WIDTH - 6)} ".ljust(WIDTH, "=")
     if satellite.failure:
         yield from textwrap.wrap(f"not computed: {satellite.failure}", WIDTH)
         return

@@ -25,7 +25,7 @@ def act_on_rows(scenario: Scenario, members: Sequence[Satellite]) -> Iterator[st
         return
     yield "To act on:"
     for member, each in found:
-        name = textwrap.shorten(member.name, 18, placeholder="...")
+        name = cut(member.name, 18)
         span = scenario.span(each["onset"], each["end"])
         yield f"  {each['level'].upper():<8} {name:<18} {each['passage']:<9} {span}"
 
@@ -38,7 +38,7 @@ def passage_block(scenario: Scenario, satellite: Satellite, advisory: Advisory) 
     for label in LABELS:
         worst = worst_face(advisory, label)
         if worst is not None:
-            factor = f"{label} {worst[0]:.2f} on {_cut(worst[1], 22)}"
+            factor = f"{label} {factor_text(worst[0])} on {cut(worst[1], 22)}"
             yield f"  factor   {factor:<42}impacts {_impacts(advisory, label)}"
     yield from textwrap.wrap(
         _lee(scenario, satellite, advisory), WIDTH, initial_indent="  lee      ", subsequent_indent=" " * 11
@@ -60,13 +60,20 @@ def steady_table(scenario: Scenario, advisories: Sequence[Advisory]) -> Iterator
             if (worst := worst_face(each, label)) is not None and worst[0] >= NAMED_FROM
         ]
         if named:
-            yield _cut(f"         worst face: {', '.join(named)}", WIDTH)
+            yield cut(f"         worst face: {', '.join(named)}", WIDTH)
 
 
 def worst_face(advisory: Advisory, label: str) -> tuple[float, str] | None:
     """Largest factor of a criterion and the face it is on; None when no face has the criterion."""
     found = [(e["mid"], e["face"]) for e in advisory["enhancement_peak"] if e["criterion"] == label]
     return max(found, key=lambda each: each[0]) if found else None
+
+
+def factor_text(factor: float) -> str:
+    """A factor in at most seven characters, five below 100,000."""
+    if factor < 99.995:
+        return f"{factor:.2f}"
+    return f"{factor:.0f}" if factor < 99_999.5 else f"{factor:.1e}"
 
 
 def _peak(scenario: Scenario, advisory: Advisory) -> str:
@@ -77,7 +84,7 @@ def _peak(scenario: Scenario, advisory: Advisory) -> str:
 
 def _figures(advisory: Advisory, label: str) -> str:
     worst = worst_face(advisory, label)
-    return " " * 19 if worst is None else f"{worst[0]:<5.2f} {_impacts(advisory, label):<13}"
+    return " " * 19 if worst is None else f"{factor_text(worst[0]):<5} {_impacts(advisory, label):<13}"
 
 
 def _impacts(advisory: Advisory, label: str) -> str:
@@ -118,5 +125,6 @@ def _lee(scenario: Scenario, satellite: Satellite, advisory: Advisory) -> str:
     )
 
 
-def _cut(text: str, width: int) -> str:
+def cut(text: str, width: int) -> str:
+    """A text in at most so many characters."""
     return text if len(text) <= width else f"{text[: width - 3]}..."

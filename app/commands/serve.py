@@ -39,7 +39,8 @@ def listen(host: str, port: int) -> socket.socket:
         return socket.create_server(where[:2], family=family, backlog=BACKLOG)
     except OSError as error:
         problem = error.strerror or str(error)
-        raise StonechatError(f"cannot listen on {host}, port {port}: {problem}; try another --port") from None
+        remedy = "give a free port and an address of this machine"
+        raise StonechatError(f"cannot listen on {host}, port {port}: {problem}; {remedy}") from None
 
 
 def address(listener: socket.socket) -> str:
