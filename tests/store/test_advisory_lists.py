@@ -8,11 +8,11 @@ import pytest
 
 from app.errors import NotFoundError
 from app.store.advisories import AdvisoryFilter, AdvisoryRecord, get_advisory, list_advisories, revisions
+from app.store.fleet import delete_satellite
 from app.store.session import Store
 from app.store.text import canonical_json
-from tests.samples import body
+from tests.samples import AS_OF_UNIX_S, body
 from tests.store.steps import Wall, computed, register, whole_run
-
 
 EVERYTHING = AdvisoryFilter()
 
@@ -67,11 +67,18 @@ def test_changed_since_includes_its_own_instant(filled: Store, wall: Wall) -> No
     assert len(listed(filled, AdvisoryFilter(changed_since=wall.now - timedelta(hours=6) + moment))) == 2
 
 
-def test_changed_since_misses_nothing_after_the_clock_was_set_back(filled: Store, wall: Wall) -> None:
-    late = wall.now
+def test_changed_since_misses_nothing_after_the_clock_was_set_back(store: Store, wall: Wall) -> None:
+    register(store, "a", "b")
+    both = computed("a", body("a")), computed("b", body("b"))
+    whole_run(store, *both, clock=wall)
+    last_seen = AdvisoryFilter(changed_since=wall.now)
     wall.wait_s(-3_600.0)
-    whole_run(filled, computed("b", body("b", level="ready")), clock=wall)
-    assert listed(filled, AdvisoryFilter(changed_since=late)) == ["GEM-2026.b", "PER-2026.a", "PER-2026.b"]
+    whole_run(store, *(computed(each, body(each, level="shelter")) for each in "ab"), clock=wall)
+    assert listed(store, last_seen) == ["PER-2026.a", "PER-2026.b"]
+    with store.write() as session:
+        delete_satellite(session, "a", AS_OF_UNIX_S, clock=wall)
+        delete_satellite(session, "b", AS_OF_UNIX_S, clock=wall)
+    assert listed(store, last_seen) == ["PER-2026.a", "PER-2026.b"]
 
 
 def pages(store: Store, limit: int) -> list[list[AdvisoryRecord]]:
