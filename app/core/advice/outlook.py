@@ -11,7 +11,9 @@ from app.core.orbit.averaging import SecularOrbit
 from app.core.spacecraft.model import Spacecraft
 
 Floats = npt.NDArray[np.float64]
-PHASES = 96  # a low orbit's lee windows are a third of them; the average is good to 0.5 %
+# A low orbit's lee windows are a third of them; where the shadow's edge falls between two costs up to 1 % of the
+# rate on the most exposed face.
+PHASES = 96
 AXIS_IN_VIEW_KM = 13_000.0  # DESIGN section 4.4: nearer, the anti-radiant axis is always dark
 
 
