@@ -11,6 +11,7 @@ import json
 import os
 import subprocess
 import sys
+import tempfile
 import traceback
 from collections.abc import Iterator
 from contextlib import contextmanager
@@ -47,12 +48,13 @@ class Nursery:
 
 @contextmanager
 def open_nursery() -> Iterator[Nursery]:
-    environment = {**os.environ, "OPENBLAS_NUM_THREADS": "1", "PYTHONPATH": str(ROOT)}
+    """Start it; what killed processes leave in the folder for temporary files goes at the end."""
     command = [sys.executable, "-m", "tests.nursery"]
-    with subprocess.Popen(
-        command, cwd=ROOT, env=environment, stdin=subprocess.PIPE, stdout=subprocess.PIPE, text=True
-    ) as process:
-        yield Nursery(process)
+    pipes = {"stdin": subprocess.PIPE, "stdout": subprocess.PIPE}
+    with tempfile.TemporaryDirectory(prefix="sc-nursery-", ignore_cleanup_errors=True) as folder:
+        fixed = {"OPENBLAS_NUM_THREADS": "1", "PYTHONPATH": str(ROOT), "TMPDIR": folder}
+        with subprocess.Popen(command, cwd=ROOT, env=os.environ | fixed, text=True, **pipes) as process:
+            yield Nursery(process)
 
 
 def serve() -> None:
