@@ -166,9 +166,9 @@ def _complete(row: StreamRow) -> None:
     for column, assumed in ASSUMED.items():
         row.values.setdefault(column, dict(assumed))
     speed = row.number_in("v_entry_km_s")
-    if speed is not None and not ESCAPE_SPEED2_KM2_S2 < speed**2 < 6400.0:
+    if speed is not None and not math.sqrt(ESCAPE_SPEED2_KM2_S2) < speed < 81.0:
         row.refuse(
-            "v_entry_km_s", f"is {speed:g}; it must lie above 11.1 (the Earth's pull alone) and below 80"
+            "v_entry_km_s", f"is {speed:g}; it must lie above 11.1 (the Earth's pull alone) and below 81"
         )
     if "v_geocentric_km_s" not in row.values:
         if speed is None:
