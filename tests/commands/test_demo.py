@@ -37,7 +37,7 @@ def test_orbits_come_in_every_notation_and_are_days_old_at_most() -> None:
     assert {path.suffix for path in paths} == {".json", ".xml", ".kvn", ".csv"}
     for path in paths:
         for elements in read_orbits(path.read_bytes(), path.name):
-            assert 0.0 < files.scenario.as_of_unix_s - elements.epoch_unix_s < 2.0 * 86_400.0  # type: ignore[union-attr]
+            assert 0.0 < files.scenario.as_of_unix_s - elements.epoch_unix_s < 2.0 * 86_400.0
 
 
 def test_a_database_of_the_users_is_never_replaced(

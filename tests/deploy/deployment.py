@@ -33,7 +33,7 @@ def instructions(name: str) -> list[list[str]]:
 def unit(name: str) -> configparser.ConfigParser:
     """A systemd unit; a key given twice is an error of ours."""
     parser = configparser.ConfigParser(interpolation=None, delimiters=("=",), comment_prefixes=("#",))
-    parser.optionxform = str  # type: ignore[assignment,method-assign]
+    parser.optionxform = str
     parser.read_string((DEPLOY / "systemd" / name).read_text(encoding="utf-8"))
     return parser
 
