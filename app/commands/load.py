@@ -4,9 +4,10 @@ from __future__ import annotations
 
 import argparse
 import re
-from collections.abc import Iterator, Sequence
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass
 from pathlib import Path
+from typing import TypeVar
 
 from sqlalchemy.orm import Session
 
@@ -15,7 +16,7 @@ from app.commands.register import Register, read_register
 from app.core.orbit.elements import MeanElements
 from app.core.sky.times import format_utc
 from app.core.spacecraft.model import Spacecraft
-from app.errors import ConflictError, FileError, InputError, NotFoundError
+from app.errors import FileError, InputError, NotFoundError, StonechatError
 from app.formats.fleet import read_fleet
 from app.formats.orbit import read_orbits
 from app.settings import load_settings
@@ -25,6 +26,8 @@ from app.store.session import Store, open_store
 FORMATS = {".json": "omm-json", ".xml": "omm-xml", ".kvn": "omm-kvn", ".csv": "omm-csv", ".tle": "tle"}
 FLEET = re.compile(rb'"satellites"|^\s*(\[\[\s*satellites\s*\]\]|satellites\s*=)', re.MULTILINE)
 BYTE_ORDER_MARK = b"\xef\xbb\xbf"
+BATCH = 200  # satellites stored by one transaction, about a second's work
+Entry = TypeVar("Entry")
 
 
 @dataclass(frozen=True)
@@ -50,9 +53,9 @@ def run(options: argparse.Namespace) -> int:
 
 
 def load_files(store: Store, paths: Sequence[Path]) -> Iterator[Line]:
-    """Load files in order and say what became of their content.
+    """Load files in order and say what became of their content; a file that cannot be read is a refused line.
 
-    What is right in a file is stored by one transaction; a file that cannot be read is a refused line.
+    A satellite and the orbit beside it are stored together or not at all. A line is told once it is true.
     """
     for path in paths:
         try:
@@ -61,8 +64,8 @@ def load_files(store: Store, paths: Sequence[Path]) -> Iterator[Line]:
             yield from load(store, data, path)
         except OSError as error:
             yield Line(True, os_problem(error))
-        except ConflictError as error:
-            yield Line(True, f"{path}: {error.detail}")
+        except StonechatError as error:  # the database is busy, or a satellite was removed meanwhile
+            yield Line(True, f"{path}: {error.detail}; what is not listed of this file was not stored")
 
 
 def is_fleet(path: Path, data: bytes) -> bool:
@@ -75,38 +78,49 @@ def is_fleet(path: Path, data: bytes) -> bool:
     return found is not None and (start.startswith(b"{") or found.start() == 0 or start.startswith(b"#"))
 
 
-def _load_fleet(store: Store, data: bytes, path: Path) -> list[Line]:
+def _load_fleet(store: Store, data: bytes, path: Path) -> Iterator[Line]:
     fleet = read_fleet(data, str(path))
-    lines = [Line(True, refusal.detail) for refusal in fleet.refused]
-    if not fleet.satellites:
-        return lines
-    taken: list[Line] = []
-    with store.write() as session:
+    with store.read() as session:
         register = read_register(session)
-        for spacecraft, elements in fleet.satellites:
-            taken.append(_put_satellite(session, register, spacecraft, path))
-            if elements is not None:
-                taken.append(_put_orbit(session, spacecraft.id, elements, "fleet", path))
-    return taken + lines
+
+    def put(session: Session, entry: tuple[Spacecraft, MeanElements | None]) -> Iterator[Line]:
+        spacecraft, elements = entry
+        yield _put_satellite(session, register, spacecraft, path)
+        if elements is not None:
+            yield _put_orbit(session, spacecraft.id, elements, "fleet", path)
+
+    yield from _in_batches(store, fleet.satellites, put)
+    yield from (Line(True, refusal.detail) for refusal in fleet.refused)
 
 
-def _load_orbits(store: Store, data: bytes, path: Path) -> list[Line]:
+def _load_orbits(store: Store, data: bytes, path: Path) -> Iterator[Line]:
     results = read_orbits(data, str(path))
-    refused = [Line(True, each.detail) for each in results if isinstance(each, FileError)]
     found = [each for each in results if isinstance(each, MeanElements)]
-    if not found:
-        return refused
-    form = FORMATS.get(path.suffix.lower(), "text")
-    taken: list[Line] = []
-    with store.write() as session:
+    with store.read() as session:
         owned, unowned = _by_owner(read_register(session), found, path)
-        for satellite_id, sets in owned.items():
-            # Of several sets for one satellite the newest is used; stored one after the other, the older
-            # ones would come and go each time the file is loaded.
-            *older, newest = sorted(sets, key=lambda each: each.epoch_unix_s)
-            taken.append(_put_orbit(session, satellite_id, newest, form, path))
-            taken += [_passed_over(satellite_id, each, path) for each in older]
-    return taken + unowned + refused
+    form = FORMATS.get(path.suffix.lower(), "text")
+
+    def put(session: Session, entry: tuple[str, list[MeanElements]]) -> Iterator[Line]:
+        # Of several sets for one satellite the newest is used; stored one after the other, the older ones
+        # would come and go each time the file is loaded.
+        satellite_id, sets = entry
+        *older, newest = sorted(sets, key=lambda each: each.epoch_unix_s)
+        yield _put_orbit(session, satellite_id, newest, form, path)
+        yield from (_passed_over(satellite_id, each, path) for each in older)
+
+    yield from _in_batches(store, list(owned.items()), put)
+    yield from unowned
+    yield from (Line(True, each.detail) for each in results if isinstance(each, FileError))
+
+
+def _in_batches(
+    store: Store, entries: Sequence[Entry], put: Callable[[Session, Entry], Iterator[Line]]
+) -> Iterator[Line]:
+    """Store entries a batch at a time: other writers wait for a transaction to end, and must not wait long."""
+    for start in range(0, len(entries), BATCH):
+        with store.write() as session:
+            taken = [line for entry in entries[start : start + BATCH] for line in put(session, entry)]
+        yield from taken
 
 
 def _by_owner(

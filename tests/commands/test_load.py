@@ -11,8 +11,8 @@ from hypothesis import HealthCheck, given
 from hypothesis import settings as profile
 from hypothesis import strategies as st
 
-from app.commands.load import Line, is_fleet, load_files
-from app.store.fleet import current_orbit, get_satellite, orbit_history, put_satellite
+from app.commands.load import BATCH, Line, is_fleet, load_files
+from app.store.fleet import current_orbit, get_satellite, list_satellites, orbit_history, put_satellite
 from app.store.session import Store
 from tests.samples import spacecraft
 
@@ -154,6 +154,17 @@ def test_a_file_that_cannot_be_read_does_not_stop_the_others(store: Store, tmp_p
     lines = list(load_files(store, [tmp_path / "missing.toml", tmp_path, good]))
     assert [line.refused for line in lines] == [True, True, False]
     assert lines[0].text == f"{tmp_path / 'missing.toml'}: No such file or directory"
+
+
+def test_a_large_fleet_is_stored_batch_by_batch(store: Store, tmp_path: Path) -> None:
+    members = [{"id": f"s{number}", "faces": [FACE]} for number in range(2 * BATCH + 1)]
+    path = tmp_path / "fleet.json"
+    path.write_text(json.dumps({"satellites": members}), encoding="utf-8")
+    told = load_files(store, [path])
+    assert "'s0' registered" in next(told).text
+    with store.read() as session:
+        assert len(list_satellites(session, limit=len(members))) == BATCH
+    assert len(list(told)) == len(members) - 1
 
 
 def test_an_ephemeris_is_refused_by_its_name(store: Store, tmp_path: Path) -> None:
