@@ -59,7 +59,7 @@ class SatelliteExposure:
         self.baselines = Baselines(spacecraft, orbit, speeds)
 
     def findings(self) -> list[Finding]:
-        """Judge every passage that still has two instants ahead of it."""
+        """Judge every passage that has not ended."""
         if not self.sky.passages:
             return []
         rates, capped = outlook_rates(self.sky, self.spacecraft, self.orbit)
@@ -76,12 +76,11 @@ class SatelliteExposure:
         return end is not None and passage.peak_unix_s <= end
 
     def _outlook_finding(self, passage: Passage, index: int, rates: Floats, capped: bool) -> Finding | None:
-        unix_s = self.sky.outlook.fine_unix_s[index]
-        ahead = unix_s >= self.sky.as_of_unix_s
-        if np.count_nonzero(ahead) < 2:
+        unix_s, ahead = from_instant(self.sky.outlook.fine_unix_s[index], rates, self.sky.as_of_unix_s)
+        if len(unix_s) < 2:
             return None
         base = self.baselines.at(passage.peak_unix_s)
-        judged = assess(base, unix_s[ahead], rates[:, ahead])
+        judged = assess(base, unix_s, ahead)
         return Finding(passage, self._stream(passage), "outlook", base, judged, None, (), capped)
 
     def _plan_finding(self, passage: Passage, index: int, outlook: Floats) -> Finding | None:
@@ -114,6 +113,22 @@ class SatelliteExposure:
             if window.overlaps(cover.start_unix_s, cover.end_unix_s)
             and window.is_worth_offering(self.spacecraft.policy.min_lee_s)
         )
+
+
+def from_instant(unix_s: Floats, rates: Floats, start_unix_s: float) -> tuple[Floats, Floats]:
+    """The part of rates (C, T) at instants (T,) from ``start_unix_s`` on, begun by the rates at that instant.
+
+    Samples far from a peak are hours apart; without the interpolated one a passage would vanish before its end.
+    """
+    first = int(np.searchsorted(unix_s, start_unix_s, side="right"))
+    if first == 0 or first == len(unix_s):
+        return unix_s[first:], rates[:, first:]
+    share = (start_unix_s - unix_s[first - 1]) / (unix_s[first] - unix_s[first - 1])
+    begun = rates[:, first - 1] * (1.0 - share) + rates[:, first] * share
+    return (
+        np.concatenate([[start_unix_s], unix_s[first:]]),
+        np.concatenate([begun[:, None], rates[:, first:]], axis=1),
+    )
 
 
 def _cover(judged: Assessment, plan_end_unix_s: float) -> Interval | None:

@@ -49,7 +49,7 @@ def test_the_first_part_of_a_date_is_a_midnight():
 
 
 @settings(derandomize=True, deadline=None, max_examples=200)
-@given(st.integers(-315_000_000, 7_200_000_000))
+@given(st.integers(-315_000_000, 4_100_000_000))
 def test_text_and_seconds_are_inverse(unix_s: int):
     assert parse_utc(format_utc(unix_s)) == unix_s
 
@@ -62,7 +62,7 @@ def test_text_and_seconds_are_inverse(unix_s: int):
         ("2026-08-13T02:00:00+02:00", "end in Z"),
         ("yesterday", "ISO 8601"),
         ("2026-13-01T00:00:00Z", "ISO 8601"),
-        ("1066-10-14T09:00:00Z", "1960 to 2200"),
+        ("1066-10-14T09:00:00Z", "1960 to 2099"),
     ],
 )
 def test_times_that_are_refused(text: str, word: str):
