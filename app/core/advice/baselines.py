@@ -13,17 +13,21 @@ from app.core.streams.sporadic import SpeedDistribution
 
 
 class Baselines:
-    """Background averaged over the orbit. The date matters only where faces do not follow the orbit's axes."""
+    """Background averaged over the orbit. The date matters only where faces do not follow the orbit's axes.
+
+    Where it does not, that of the orbit's epoch serves every date, so that a run and a series agree to the bit.
+    """
 
     def __init__(self, spacecraft: Spacecraft, orbit: SecularOrbit, speeds: SpeedDistribution) -> None:
         self.spacecraft, self.orbit, self.speeds = spacecraft, orbit, speeds
-        self._latest: Baseline | None = None
+        self._timeless = self._of(orbit.epoch_unix_s) if follows_orbit(spacecraft) else None
 
     def at(self, unix_s: float) -> Baseline:
         """Return the baseline at a date; ``OrbitError`` when a face has no background."""
-        if self._latest is None or not follows_orbit(self.spacecraft):
-            grid = TimeGrid(np.array([unix_s]))
-            ellipse = self.orbit.ellipse(np.array(unix_s), grid.teme_to_gcrf[0])
-            rates = orbit_background(self.spacecraft, ellipse, grid.sun_km[0], self.speeds)
-            self._latest = baseline(self.spacecraft, rates)
-        return self._latest
+        return self._timeless or self._of(unix_s)
+
+    def _of(self, unix_s: float) -> Baseline:
+        grid = TimeGrid(np.array([unix_s]))
+        ellipse = self.orbit.ellipse(np.array(unix_s), grid.teme_to_gcrf[0])
+        rates = orbit_background(self.spacecraft, ellipse, grid.sun_km[0], self.speeds)
+        return baseline(self.spacecraft, rates)
