@@ -9,7 +9,7 @@ from pathlib import Path
 
 from app.formats.stream_table import COLUMNS, NUMBERS
 
-CROSSCHECK = Path(__file__).parent / "data" / "streams_crosscheck.csv"
+DATA = Path(__file__).parent / "data"  # streams_SOURCES.md tells where they come from
 SOURCES = {"LIST": "An invented list", "BOOK": "An invented book"}
 GOOD = {
     "code": "ABC",
@@ -47,6 +47,16 @@ def table(*rows: dict[str, str], header: tuple[str, ...] = COLUMNS) -> bytes:
 
 @cache
 def published() -> dict[tuple[str, str], dict[str, str]]:
-    """Rows of the comparison table by stream and source key (``MDC`` without its count)."""
-    with CROSSCHECK.open(newline="", encoding="utf-8") as file:
+    """Values by stream and source key (``MDC`` without its count), with the ranges the IAU list spans."""
+    return _by_stream_and_source("streams_crosscheck.csv")
+
+
+@cache
+def solutions() -> dict[tuple[str, str], dict[str, str]]:
+    """Single solutions of the IAU list by stream and source key."""
+    return _by_stream_and_source("streams_solutions.csv")
+
+
+def _by_stream_and_source(name: str) -> dict[tuple[str, str], dict[str, str]]:
+    with (DATA / name).open(newline="", encoding="utf-8") as file:
         return {(each["code"], each["source"].split(" ")[0]): each for each in csv.DictReader(file)}

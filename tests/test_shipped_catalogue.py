@@ -9,14 +9,16 @@ import pickle
 import statistics
 from importlib.resources import files
 
+import astropy.units as u
 import pytest
+from astropy.coordinates import SkyCoord
 from numpy.testing import assert_allclose
 
 from app.catalogue_file import entry_document, load_catalogue, load_sources, read_catalogue
-from app.core.streams.activity import stream_zhr
+from app.core.streams.activity import downstream_direction, stream_zhr
 from app.core.streams.model import CatalogueEntry, Stream
 from app.formats.stream_table import NUMBERS, PROVENANCE
-from tests.stream_tables import published
+from tests.stream_tables import published, solutions
 
 LISTS = ("IMO26", "IMO23", "IMO18")  # working lists of the International Meteor Organization, newest first
 
@@ -139,6 +141,31 @@ def test_speeds_that_are_on_lie_among_the_solutions_of_the_iau_list():
             assert_allclose(each.v_geocentric_km_s, math.sqrt(56.0**2 - 123.063), atol=1e-3)
             continue
         assert float(low) <= each.v_geocentric_km_s <= float(high or low), each.code
+
+
+@pytest.mark.parametrize(("code", "source"), solutions())
+def test_a_value_is_that_of_the_very_publication_it_names(code: str, source: str):
+    told = [
+        (column, value)
+        for values in entry(code).values
+        for column, value in values.items()
+        if value["source"] == source
+    ]
+    assert told
+    listed_to = 0.0051  # the Leonids' 0.659 and -0.325 are rounded to two decimals
+    for column, value in told:
+        assert_allclose(
+            value["value"], float(solutions()[code, source][column]), atol=listed_to, err_msg=column
+        )
+
+
+@pytest.mark.parametrize(("code", "source"), [key for key in solutions() if entry(key[0]).enabled])
+def test_radiants_that_are_on_agree_with_the_solutions_along_their_drift(code: str, source: str):
+    listed = {column: float(value) for column, value in list(solutions()[code, source].items())[2:] if value}
+    then = downstream_direction(stream(code), listed["solar_longitude_peak_deg"])
+    there = SkyCoord(listed["radiant_ra_deg"] * u.deg, listed["radiant_dec_deg"] * u.deg)
+    apart_deg = math.degrees(math.acos(min(1.0, float(-then @ there.cartesian.xyz.to_value()))))
+    assert apart_deg < (5.2 if code in ("STA", "NTA") else 2.5)  # the Taurids' radiants are a broad complex
 
 
 def test_the_limit_of_a_meteor_an_hour_fits_the_streams_that_have_both():
