@@ -123,16 +123,14 @@ def _fleet(store: Store, record: RunRecord) -> Iterator[Satellite]:
 
 
 def _example(scenario: Scenario, members: Sequence[Satellite]) -> str:
-    """The id of the most urgent advisory."""
+    """The path of the most urgent advisory; settings may be such that none is urgent."""
     ranked = [each for member in scenario.by_urgency(list(members)) for each in scenario.urgent(member)]
-    if not ranked:
-        raise StonechatError("the demo's scenario gives nothing to act on; its data_demo folder was changed")
-    return str(ranked[0]["id"])
+    return f"/v1/advisories/{ranked[0]['id']}" if ranked else "/v1/advisories"
 
 
 def _say_what_next(port: int, example: str) -> None:
     print("\nNext: `stonechat demo` prints this, then serves the API. Ask it, for instance:")
-    print(f"  curl -s http://{HOST}:{port}/v1/advisories/{example}")
+    print(f"  curl -s http://{HOST}:{port}{example}")
 
 
 @contextmanager
@@ -153,6 +151,6 @@ def _serve(
     base = address(listener)
     print(f"\nServing {base} with the clock held at {format_utc(scenario.as_of_unix_s)}.")
     print("Ctrl-C ends it. In another terminal, try")
-    print(f"  curl -s {base}/v1/advisories/{example}")
+    print(f"  curl -s {base}{example}")
     print(f"  curl -s '{base}/v1/advisories?level=shelter'", flush=True)
     serve(settings, store, listener, clock=lambda: scenario.as_of_unix_s)
