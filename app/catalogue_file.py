@@ -78,20 +78,19 @@ def read_catalogue(data: bytes, sources: Mapping[str, str] | None = None) -> Cat
 def entry_document(entry: CatalogueEntry, sources: Mapping[str, str] | None = None) -> dict[str, Any]:
     """An entry as JSON values, each number with its source, citation and provenance."""
     known = load_sources() if sources is None else sources
-    components = [
-        {
-            column: {**value, "citation": [known[key] for key in value["source"].split("+")]}
-            for column, value in component.items()
-        }
-        for component in entry.values
-    ]
+
+    def cited(value: Mapping[str, Any]) -> dict[str, Any]:
+        return {**value, "citation": [known[key] for key in value["source"].split("+")]}
+
     return {
         "code": entry.code,
         "name": entry.name,
         "confidence": entry.confidence,
         "enabled": entry.enabled,
         "why_off": entry.why_off,
-        "components": components,
+        "parent_body": cited(entry.parent_body) if entry.parent_body else None,
+        "component_names": list(entry.component_names),
+        "components": [{column: cited(v) for column, v in component.items()} for component in entry.values],
         "notes": list(entry.notes),
     }
 
@@ -114,6 +113,8 @@ def _entry(group: Sequence[StreamRow]) -> CatalogueEntry:
         stream=_stream(annual) if annual and not _incomplete(annual) else None,
         values=tuple(row.values for row in group),
         notes=_notes(group),
+        component_names=tuple(row.component for row in group),
+        parent_body=main.parent_body,
     )
 
 

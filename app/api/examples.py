@@ -159,6 +159,13 @@ STREAM: dict[str, Any] = {
     "confidence": "A",
     "enabled": True,
     "why_off": None,
+    "parent_body": {
+        "value": "109P/Swift-Tuttle",
+        "source": "MDC",
+        "citation": ["International Astronomical Union, Meteor Data Center"],
+        "provenance": "read",
+    },
+    "component_names": ["main"],
     "components": [
         {
             "zhr_peak": {

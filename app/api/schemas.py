@@ -223,6 +223,15 @@ class CatalogueValue(Shape):
     provenance: Literal["read", "computed", "memory"]
 
 
+class CatalogueText(Shape):
+    """One text of the catalogue and where it comes from."""
+
+    value: str
+    source: str
+    citation: list[str]
+    provenance: str
+
+
 class StreamOut(Shape):
     """A stream as catalogued; one table of values for each component of its activity."""
 
@@ -231,6 +240,8 @@ class StreamOut(Shape):
     confidence: str
     enabled: bool
     why_off: str | None
+    parent_body: CatalogueText | None
+    component_names: list[str]
     components: list[dict[str, CatalogueValue]]
     notes: list[str]
     catalogue_digest: str

@@ -44,7 +44,7 @@ def read_stream(asked: AskedNow, code: StreamCode) -> Response:
     for entry in catalogue.entries:
         if entry.code == code:
             return reply(_shown(entry, catalogue.digest), asked.fresh_tag())
-    raise NotFoundError(f"there is no stream {quoted(code)}; codes are upper case, such as PER")
+    raise NotFoundError(f"there is no stream {quoted(code)}; GET /v1/streams lists the codes, such as PER")
 
 
 def _shown(entry: CatalogueEntry, digest: str) -> dict[str, Any]:

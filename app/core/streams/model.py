@@ -84,7 +84,8 @@ class Stream:
 class CatalogueEntry:
     """A stream as catalogued: the usable ``stream`` or None, why it is off, and every value's origin.
 
-    ``values``: rows of the table by component, each ``{column: {"value", "source", "provenance"}}``.
+    ``values``: rows of the table by component, each ``{column: {"value", "source", "provenance"}}``,
+    named by ``component_names``. ``parent_body``: the same three fields, where one is known.
     """
 
     code: str
@@ -95,6 +96,8 @@ class CatalogueEntry:
     stream: Stream | None
     values: tuple[Mapping[str, Mapping[str, Any]], ...]
     notes: tuple[str, ...] = ()
+    component_names: tuple[str, ...] = ()
+    parent_body: Mapping[str, Any] | None = None
 
 
 @dataclass(frozen=True)
