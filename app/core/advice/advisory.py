@@ -12,7 +12,7 @@ from app.core.advice.assessment import Level
 from app.core.advice.satellite import Finding
 from app.core.exposure.damage import critical_mass
 from app.core.exposure.faces import criterion_rows
-from app.core.orbit.elements import SECONDS_PER_DAY
+from app.core.orbit.elements import SECONDS_PER_DAY, MeanElements
 from app.core.run import Registered, RunInputs
 from app.core.sky.bodies import wrap_deg
 from app.core.sky.times import TimeGrid, format_utc
@@ -59,7 +59,7 @@ def advisory(
         "plan_until": format_utc(plan_until_unix_s) if plan_until_unix_s is not None else None,
     }
     body["actions"] = list(_actions(body, judged.level))
-    body["provenance"] = _provenance(inputs, satellite, finding)
+    body["provenance"] = _provenance(inputs, satellite, plan_until_unix_s, finding)
     body["caution"] = CAUTION
     return body
 
@@ -139,7 +139,9 @@ def _actions(body: dict[str, Any], level: Level) -> Iterator[str]:
     yield f"Return to routine operations after {body['end']}."
 
 
-def _provenance(inputs: RunInputs, satellite: Registered, finding: Finding) -> dict[str, Any]:
+def _provenance(
+    inputs: RunInputs, satellite: Registered, plan_until_unix_s: float | None, finding: Finding
+) -> dict[str, Any]:
     law, elements = mass_law(inputs.mass_law), satellite.elements
     assert elements is not None  # without an orbit there is no finding
     return {
@@ -153,8 +155,20 @@ def _provenance(inputs: RunInputs, satellite: Registered, finding: Finding) -> d
         "mass_law_source": law.source,
         "background_source": BACKGROUND_SOURCE,
         "background_speeds_source": analytic_speeds().source,
-        "notes": list(_notes(law, finding)),
+        "notes": [*_notes_on_time(inputs, elements, plan_until_unix_s, finding), *_notes(law, finding)],
     }
+
+
+def _notes_on_time(
+    inputs: RunInputs, elements: MeanElements, plan_until_unix_s: float | None, finding: Finding
+) -> Iterator[str]:
+    if plan_until_unix_s is None:
+        yield (
+            f"The orbit is trusted {inputs.horizon_days(elements):g} days either side of its epoch, not now: "
+            "only the outlook is given. Send a fresh one."
+        )
+    if finding.passage.peak_unix_s < inputs.as_of_unix_s:
+        yield "The stream is past its own maximum: times, factors and impacts are of what still lies ahead."
 
 
 def _notes(law: MassLaw, finding: Finding) -> Iterator[str]:

@@ -290,3 +290,18 @@ def test_faces_fixed_in_space_have_a_background_of_the_date():
     law = AttitudeLaw(AttitudeLawKind.INERTIAL, (0.0, 0.0, 0.0, 1.0))
     body = advise(plate(MASS, attitude=law, normal=(0.4, 0.4, 0.8)))
     assert body["enhancement_peak"][0]["mid"] > 1.0
+
+
+def notes_at(as_of_unix_s: float) -> str:
+    (result,) = compute_satellites(inputs(as_of_unix_s=as_of_unix_s), [registered(box(CHARGE), LOW)])
+    return " ".join(result.advisories[0]["provenance"]["notes"])
+
+
+def test_a_stale_orbit_is_said_to_be_stale() -> None:
+    assert "not now" in notes_at(AS_OF_UNIX_S + 8.0 * DAY_S)
+    assert "not now" not in notes_at(AS_OF_UNIX_S)
+
+
+def test_it_is_said_when_a_stream_is_past_its_own_maximum() -> None:
+    assert "past its own maximum" in notes_at(AS_OF_UNIX_S + 4.0 * DAY_S)
+    assert "past its own maximum" not in notes_at(AS_OF_UNIX_S)
