@@ -20,7 +20,7 @@ from app.core.trial import Floats, Trial
 from app.errors import FieldError, FileError
 from app.formats.orbit import read_orbits
 from app.formats.satellite import PARTS, parse_spacecraft
-from app.formats.text import shown
+from app.formats.text import MAX_NAME_LENGTH, shown
 from app.formats.trial_schema import MAX_STATES, StateIn, StreamIn, TrialIn
 from app.formats.validation import validated
 
@@ -97,7 +97,8 @@ def _orbit_states(model: TrialIn) -> tuple[Floats, Floats, Floats]:
 def _elements(orbit: dict[str, Any] | None) -> MeanElements:
     for keyword, value in (orbit or {}).items():
         if isinstance(value, dict | list):
-            raise FieldError(f"orbit.{shown(keyword)}", "must be a number or a text")
+            name = keyword[:MAX_NAME_LENGTH] if keyword.isprintable() else shown(keyword)
+            raise FieldError(f"orbit.{name}", "must be a number or a text")
     results = read_orbits(json.dumps(orbit).encode(), "orbit", "application/json")
     if len(results) != 1:
         raise FieldError("orbit", f"holds {len(results)} element sets; give one OMM object")
