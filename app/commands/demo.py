@@ -33,6 +33,7 @@ MARK_TEXT = (
     "The database in this folder belongs to the demo; every `stonechat demo --dir` here makes it anew.\n"
 )
 PAGE = 500
+PINNED = ("mass_law", "horizon_low_days", "horizon_high_days", "outlook_days")
 HOST = "127.0.0.1"
 
 
@@ -76,8 +77,12 @@ def demo_files(folder: Path) -> DemoFiles:
 
 
 def _settings(folder: Path) -> Settings:
-    """An SQLite file in the folder, whatever database the environment names; eight satellites need no workers."""
-    return load_settings(dir=folder, database_url="", executor="serial")
+    """An SQLite file in the folder and the defaults of whatever a number depends on, whatever the environment says.
+
+    Eight satellites need no workers.
+    """
+    same_for_everyone = {name: Settings.model_fields[name].default for name in PINNED}
+    return load_settings(dir=folder, database_url="", executor="serial", **same_for_everyone)
 
 
 @contextmanager

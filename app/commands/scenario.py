@@ -7,12 +7,13 @@ from datetime import UTC, datetime, timedelta, timezone
 from typing import Any
 
 from app.core.sky.bodies import wrap_deg
+from app.core.sky.longitude import MEAN_SOLAR_MOTION_DEG_PER_S
 from app.core.sky.times import parse_utc
 
 Advisory = dict[str, Any]
 DAY_S = 86400.0
 ORDER = {"shelter": 0, "ready": 1, "steady": 2}
-PAST_DEG = 0.5  # half a day beyond its maximum: what lies ahead is a stream's decline
+MARGIN_DEG = 0.2  # a few hours: the Sun's motion is not quite even
 
 
 @dataclass(frozen=True)
@@ -56,8 +57,9 @@ class Scenario:
 
     def is_past_maximum(self, advisory: Advisory) -> bool:
         """Whether the stream's own maximum is over, so that the advisory's peak is the worst still to come."""
-        beyond = advisory["peak_solar_longitude_deg"] - self.maxima_deg[advisory["stream"]]
-        return float(wrap_deg(beyond)) > PAST_DEG
+        beyond_deg = wrap_deg(advisory["peak_solar_longitude_deg"] - self.maxima_deg[advisory["stream"]])
+        ahead_s = parse_utc(advisory["peak_at"]) - self.as_of_unix_s
+        return float(beyond_deg) > ahead_s * MEAN_SOLAR_MOTION_DEG_PER_S + MARGIN_DEG
 
     def near(self, satellite: Satellite) -> list[Advisory]:
         """Advisories whose peak lies within the outlook's days, in the order of their peaks."""

@@ -115,15 +115,21 @@ def test_what_peaks_later_is_left_for_later() -> None:
 
 
 def test_a_stream_past_its_maximum_is_marked() -> None:
-    past = advisory(level="steady", peak_solar_longitude_deg=141.0)
-    shown = text(satellite("a", past))
-    assert "13 Aug 04:00* 1.10" in shown
+    soon = "2026-08-10T08:00:00Z"  # hardly after the clock: the maximum, a degree before, is over
+    shown = text(satellite("a", advisory(level="steady", peak_at=soon, peak_solar_longitude_deg=141.0)))
+    assert "10 Aug 10:00* 1.10" in shown
     assert "* This stream's maximum is over" in shown
     assert "*" not in text(satellite("a", advisory()))
 
 
+def test_a_worst_time_after_a_maximum_still_to_come_is_not_marked() -> None:
+    shown = text(satellite("a", advisory(level="steady", peak_solar_longitude_deg=141.0)))
+    assert "13 Aug 04:00 1.10" in shown  # the helper folds runs of blanks
+    assert "*" not in shown
+
+
 def test_solar_longitude_is_compared_across_zero() -> None:
-    scenario = Scenario("Wren", 0.0, 0.0, 60.0, {"PER": 359.8})
+    scenario = Scenario("Wren", parse_utc("2026-08-13T01:00:00Z"), 0.0, 60.0, {"PER": 359.8})
     assert scenario.is_past_maximum(advisory(peak_solar_longitude_deg=0.9))
     assert not scenario.is_past_maximum(advisory(peak_solar_longitude_deg=358.0))
 

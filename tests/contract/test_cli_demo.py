@@ -85,7 +85,14 @@ def test_the_geostationary_satellite_is_told_that_it_has_no_lee(once: Done) -> N
 
 
 def test_everyone_sees_the_same(once: Done, tmp_path: Path) -> None:
-    assert run(tmp_path, "demo", "--once", PYTHONHASHSEED="7", LC_ALL="C").stdout == once.stdout
+    elsewhere = {
+        "PYTHONHASHSEED": "7",
+        "LC_ALL": "C",
+        "STONECHAT_MASS_LAW": "verniani",
+        "STONECHAT_HORIZON_LOW_DAYS": "1",
+        "STONECHAT_DATABASE_URL": "postgresql+psycopg://nobody@nowhere.invalid/none",
+    }
+    assert run(tmp_path, "demo", "--once", **elsewhere).stdout == once.stdout
 
 
 def free_port() -> int:
