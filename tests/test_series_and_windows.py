@@ -10,8 +10,10 @@ import numpy as np
 import pytest
 from numpy.testing import assert_allclose
 
+from app.core.advice.passages import find_passages
 from app.core.orbit.elements import MeanElements
 from app.core.sky.times import format_utc, parse_utc
+from app.core.spacecraft.model import AttitudeLaw, AttitudeLawKind
 from app.core.streams.model import Component
 from app.errors import FieldError, OrbitError
 from app.on_demand import Series, lee_windows, satellite_series
@@ -36,6 +38,8 @@ from tests.core.advice.samples import (
 
 RUN = inputs(PERSEIDS, CAPRICORNIDS)
 BOX = box(MASS, CHARGE)
+SUN = AttitudeLaw(AttitudeLawKind.SUN)
+FIXED = AttitudeLaw(AttitudeLawKind.INERTIAL, (0.1, 0.2, 0.3, 0.9273618495495703))
 six_digits = 1e-5
 HOUR_S = 3600.0
 EPOCH = LOW.epoch_unix_s
@@ -66,6 +70,19 @@ def test_the_peak_of_the_series_is_the_peak_of_the_advisory(elements: MeanElemen
     whole = 1.0 + found.satellite_by_stream[:, per].max(axis=1)
     assert_allclose(whole, [row["mid"] for row in body["satellite_enhancement_peak"]], rtol=six_digits)
     assert found.unix_s[np.argmax(found.satellite_by_stream[1, per])] == peak
+
+
+@pytest.mark.parametrize("law", [SUN, FIXED], ids=["sun", "inertial"])
+def test_faces_that_leave_the_orbits_axes_have_the_background_of_the_peaks_date(law: AttitudeLaw):
+    """A series takes that of its middle; about the stream's own peak it is the advisory's."""
+    satellite, run = registered(box(CHARGE, attitude=law), TALL), inputs(PERSEIDS)
+    (body,) = compute_satellites(run, [satellite])[0].advisories
+    (passage,) = find_passages([PERSEIDS], AS_OF_UNIX_S, AS_OF_UNIX_S + DAY_S)
+    half = 0.5 * DAY_S
+    start = AS_OF_UNIX_S + 60.0 * round((passage.peak_unix_s - half - AS_OF_UNIX_S) / 60.0)
+    found = series(start, 2.0 * (passage.peak_unix_s - start), run=run, satellite=satellite)
+    expected = [row["mid"] for row in body["satellite_enhancement_peak"]]
+    assert_allclose(1.0 + found.satellite_by_stream[:, 0].max(axis=1), expected, rtol=six_digits)
 
 
 def test_each_face_peaks_as_in_the_advisory():

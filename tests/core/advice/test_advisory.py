@@ -123,6 +123,16 @@ def test_rate_and_radiant_belong_to_the_peak_that_is_told():
     assert_allclose(body["radiant_dec_deg"], 58.0 + 0.3 * (longitude - 140.0), atol=0.006)
 
 
+def test_the_radiant_drifts_in_both_coordinates():
+    # two days past the maximum the passage is judged from now on, with the radiant of now
+    drifting = replace(PERSEIDS, drift_ra_deg_per_deg=1.4, drift_dec_deg_per_deg=-3.0)
+    body = advise(plate(**STEADY), streams=(drifting,), as_of_unix_s=AS_OF_UNIX_S + 5 * DAY_S)
+    away = body["peak_solar_longitude_deg"] - 140.0
+    assert 1.0 < away < 3.0
+    assert_allclose(body["radiant_ra_deg"], 48.0 + 1.4 * away, atol=0.006)
+    assert_allclose(body["radiant_dec_deg"], 58.0 - 3.0 * away, atol=0.006)
+
+
 def test_every_face_and_criterion_has_its_factor():
     body = advise(box(MASS, CHARGE))
     rows = [(row["face"], row["criterion"]) for row in body["enhancement_peak"]]

@@ -154,6 +154,20 @@ def test_drag_cannot_bring_the_satellite_down_in_the_outlook():
     assert_allclose(held, free, rtol=two_percent, atol=sampling_of_the_edge * free.max())
 
 
+@pytest.mark.parametrize("knots_before_the_peak", [0.5, 2.5, -1.5])
+def test_between_knots_the_geometry_is_carried_on(knots_before_the_peak: float):
+    # two days between knots, in which the plane turns by ten degrees
+    limits = {"start_solar_longitude_deg": 116.0, "end_solar_longitude_deg": 164.0}
+    stream = replace(steady(PERSEIDS), **limits)
+    sky = run_sky([stream], LAW, AS_OF_UNIX_S, 1.0, 60.0)
+    rates, _ = outlook_rates(sky, box(MASS), secular_orbit(LOW))
+    knot = sky.outlook.knot_unix_s[0]
+    wanted = knot[12] - knots_before_the_peak * (knot[13] - knot[12])
+    nearest = int(np.argmin(np.abs(sky.outlook.fine_unix_s[0] - wanted)))
+    expected = mean_of_revolutions(box(MASS), LOW, stream, float(sky.outlook.fine_unix_s[0, nearest]))
+    assert_allclose(rates[:, 0, nearest], expected, rtol=0, atol=sampling_of_the_edge * expected.max())
+
+
 def test_rates_between_knots_follow_the_rate_of_the_stream():
     sky = run_sky([PERSEIDS], LAW, AS_OF_UNIX_S, 1.0, 30.0)
     spherical = secular_orbit(replace(LOW, inclination_deg=90.0))  # a polar plane does not drift

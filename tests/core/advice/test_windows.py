@@ -9,7 +9,7 @@ import pytest
 from numpy.testing import assert_allclose
 
 from app.core.advice.events import Interval
-from app.core.advice.plan import PlanExposure
+from app.core.advice.plan import PlanExposure, between
 from app.core.advice.run_sky import PlanSky, plan_sky
 from app.core.advice.windows import lee_intervals, track_of
 from app.core.exposure.faces import StreamSet, stream_focusing
@@ -80,6 +80,18 @@ def test_edges_agree_with_a_search_every_tenth_of_a_second(
             assert len(change) == 1
             assert inside[-1] == opens
             assert near[change[0]] - 1e-3 <= edge <= near[change[0] + 1] + 1e-3
+
+
+def test_edges_follow_a_radiant_that_drifts_between_samples():
+    # twenty degrees of drift a degree of the Sun move an edge by 0.2 s within a minute
+    five_milliseconds = 5e-3
+    drifting = replace(PERSEIDS, drift_ra_deg_per_deg=20.0, drift_dec_deg_per_deg=-10.0)
+    found = windows(LOW, sky(drifting, days=0.5))[1:-1]
+    starts, ends = (np.array([getattr(w, f"{edge}_unix_s") for w in found]) for edge in ("start", "end"))
+    assert len(found) >= 5
+    for edges, opens in ((starts, True), (ends, False)):
+        assert np.all(hidden(LOW, (drifting,), edges + five_milliseconds) == opens)
+        assert np.all(hidden(LOW, (drifting,), edges - five_milliseconds) != opens)
 
 
 def test_every_hidden_minute_lies_in_a_window_and_no_other():
@@ -171,6 +183,19 @@ def test_a_quiet_week_has_no_streams_and_no_windows():
     assert seen.rates.shape == (1, 0, 1441)
     assert seen.mattering(judged_by([1.0]), 1.77e9, 1.77e9 + DAY_S) == ()
     assert seen.strongest(judged_by([1.0]), 1.77e9, 1.77e9 + DAY_S) == ()
+
+
+@pytest.mark.parametrize(
+    ("start", "end", "kept"),
+    [
+        (0.0, 30.0, slice(0, 4)),
+        (10.0, 20.0, slice(1, 3)),
+        (11.0, 19.0, slice(2, 2)),
+        (25.0, 99.0, slice(3, 4)),
+    ],
+)
+def test_samples_between_two_instants_include_both(start: float, end: float, kept: slice):
+    assert between(np.array([0.0, 10.0, 20.0, 30.0]), start, end) == kept
 
 
 def test_no_track_has_no_windows():
