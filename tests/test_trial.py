@@ -1,4 +1,4 @@
-"""A trial end to end: the example of DESIGN section 6.3 field by field, what is refused, and any JSON at all."""
+"""A trial end to end: the standing example field by field, what is refused, and any JSON at all."""
 
 from __future__ import annotations
 

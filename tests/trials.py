@@ -1,4 +1,4 @@
-"""Trial requests: the example of DESIGN section 6.3 and variations of it."""
+"""Trial requests: the standing example and variations of it."""
 
 from __future__ import annotations
 

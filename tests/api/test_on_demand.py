@@ -59,7 +59,7 @@ def test_face_and_criterion_choose(ready: TestClient) -> None:
         ("from=2026-08-13T02:00:00Z&to=2026-08-13T02:00:00Z", "to"),
         ("from=yesterday&to=2026-08-13T02:00:00Z", "from"),
         ("from=2026-08-13T02:00:00&to=2026-08-13T03:00:00Z", "from"),
-        ("from=1970-01-01T00:00:00Z&to=2100-01-01T00:00:00Z", "step_s"),
+        ("from=1970-01-01T00:00:00Z&to=2099-01-01T00:00:00Z", "step_s"),
     ],
 )
 def test_what_is_wrong_with_a_series_is_named(ready: TestClient, query: str, field: str) -> None:

@@ -1,4 +1,4 @@
-"""Exit statuses, reasons and reports of the commands (DESIGN section 6.1), each run as its own process."""
+"""Exit statuses, reasons and reports of the commands, each run as its own process."""
 
 from __future__ import annotations
 

@@ -1,4 +1,4 @@
-"""Killing a computing process at any instant loses nothing and shows nothing half-done (DESIGN section 7)."""
+"""Killing a computing process at any instant loses nothing and shows nothing half-done."""
 
 from __future__ import annotations
 

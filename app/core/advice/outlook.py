@@ -14,7 +14,7 @@ Floats = npt.NDArray[np.float64]
 # A low orbit's lee windows are a third of them; where the shadow's edge falls between two costs up to 1 % of the
 # rate on the most exposed face.
 PHASES = 96
-AXIS_IN_VIEW_KM = 13_000.0  # DESIGN section 4.4: nearer, the anti-radiant axis is always dark
+AXIS_IN_VIEW_KM = 13_000.0  # nearer, the anti-radiant axis lies in the shadow of even the slowest stream
 
 
 def outlook_rates(sky: RunSky, spacecraft: Spacecraft, orbit: SecularOrbit) -> tuple[Floats, list[bool]]:

@@ -1,4 +1,4 @@
-"""What an advisory says: fields of DESIGN section 6.4, in words and numbers that follow from the finding."""
+"""What an advisory says: its fields, in words and numbers that follow from the finding."""
 
 from __future__ import annotations
 
@@ -150,7 +150,7 @@ def test_bands_stay_open_until_they_can_be_computed():
 
 
 def test_fast_streams_are_worse_electrically_than_mechanically():
-    # charge grows as the 3.4th power of speed at the same hazard (DESIGN section 1)
+    # charge grows as the 3.4th power of speed at the same hazard
     body = advise(box(CHARGE, Criterion(CriterionKind.PENETRATION, 1.0, "al-6061-t6")))
     charge, wall = (row["mid"] for row in body["satellite_enhancement_peak"])
     assert charge > wall > 1.0

@@ -1,4 +1,4 @@
-"""Enhancement factors against the definitions of DESIGN section 2, worked by hand."""
+"""Enhancement factors against their definitions, worked by hand."""
 
 from __future__ import annotations
 

@@ -1,4 +1,4 @@
-"""The revision rule (DESIGN 6.4): level, peak factor by more than 10 %, a time by more than 10 minutes, a window."""
+"""The revision rule: level, peak factor by more than 10 %, a time by more than 10 minutes, a window."""
 
 from __future__ import annotations
 
