@@ -1,14 +1,14 @@
 """Everything Stonechat refuses, as one tree. Each error carries the data needed to mend the input.
 
-    StonechatError
-    ├── InputError            what was given cannot be used        -> 400 / exit 1
-    │   ├── FieldError        one field of a structured document   -> 422 / exit 1
-    │   ├── FileError         a line or keyword of a file          -> 422 / exit 1
-    │   └── CatalogueError    a row and column of the catalogue
-    ├── OrbitError            an orbit that cannot be propagated or averaged
-    ├── NotFoundError         no such object                       -> 404
-    ├── ConflictError         the object changed, or is busy       -> 409
-    └── SettingsError         a STONECHAT_* variable is wrong      -> exit 1
+StonechatError
+├── InputError            what was given cannot be used        -> 400 / exit 1
+│   ├── FieldError        one field of a structured document   -> 422 / exit 1
+│   ├── FileError         a line or keyword of a file          -> 422 / exit 1
+│   └── CatalogueError    a row and column of the catalogue
+├── OrbitError            an orbit that cannot be propagated or averaged
+├── NotFoundError         no such object                       -> 404
+├── ConflictError         the object changed, or is busy       -> 409
+└── SettingsError         a STONECHAT_* variable is wrong      -> exit 1
 """
 
 from __future__ import annotations
