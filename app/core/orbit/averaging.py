@@ -6,6 +6,7 @@ from dataclasses import dataclass
 
 import numpy as np
 import numpy.typing as npt
+from sgp4.api import SGP4_ERRORS
 
 from app.core.constants import BLOCKING_RADIUS_KM, MU_EARTH_KM3_S2
 from app.core.orbit.elements import EARTH_RADIUS_KM, MeanElements
@@ -102,7 +103,8 @@ def secular_orbit(elements: MeanElements) -> SecularOrbit:
     """Mean orbit of an SGP4 element set. ``OrbitError`` when its perigee lies in the air."""
     record = satrec(elements)
     if record.error:
-        raise OrbitError(f"SGP4 refuses the elements at their epoch (error {record.error})")
+        why = SGP4_ERRORS.get(record.error, "unknown error")
+        raise OrbitError(f"SGP4 refuses the elements at their epoch, error {record.error}: {why}")
     a_km = record.a * EARTH_RADIUS_KM
     if a_km * (1.0 - record.ecco) < BLOCKING_RADIUS_KM:
         raise OrbitError(

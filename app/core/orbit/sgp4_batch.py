@@ -44,7 +44,7 @@ def first_failure(ephemeris: Ephemeris, satellite: int, unix_s: Floats) -> str |
     """Say in words why and when a satellite cannot be used at the first ``len(unix_s)`` instants, else None."""
     error = ephemeris.error[satellite, : len(unix_s)]
     distance_km = np.linalg.norm(ephemeris.r_km[satellite, : len(unix_s)], axis=-1)
-    unusable = (error != 0) | (distance_km < BLOCKING_RADIUS_KM)
+    unusable = (error != 0) | ~(distance_km >= BLOCKING_RADIUS_KM)  # a NaN counts too
     if not unusable.any():
         return None
     first = int(np.argmax(unusable))
