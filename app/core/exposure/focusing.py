@@ -75,32 +75,38 @@ def focus(
     """
     pull = mu_km3_s2 / np.square(v_inf_km_s)
     graze_km = radius_km * np.sqrt(1.0 + 2.0 * pull / radius_km)
-    true_s2 = 0.5 - 0.5 * cos_theta
     cap_s2 = np.square(half_sine_cap(spread_deg))
-    s2 = np.clip(true_s2, cap_s2, 1.0)
-    s, c2 = np.sqrt(s2), 1.0 - s2
+    s2 = 0.5 - 0.5 * cos_theta
+    capped = s2 < cap_s2
+    np.clip(s2, cap_s2, 1.0, out=s2)
+    s = np.sqrt(s2)
     w = (2.0 * pull) * (1.0 / r_km)
     w += s2
     np.sqrt(w, out=w)
-    total, product = s + w, s * w
+    total, product, c2 = s + w, s * w, np.subtract(1.0, s2, out=s2)
     reach = np.sqrt(c2)
     reach *= r_km
-    margin = np.minimum(c2 - product, 1.0 - total * reach * (1.0 / graze_km))
-    branches: tuple[Branch, ...] = (Branch(1.0, _density_ratio(total, product, margin <= 0.0)),)
+    miss = total * reach
+    miss *= -1.0 / graze_km
+    miss += 1.0
+    margin = np.minimum(c2 - product, miss, out=miss)
+    branches: tuple[Branch, ...] = (Branch(1.0, _density_ratio(total, product, margin > 0.0)),)
     # |b| of the minus branch is largest on the axis, sqrt(2 a r). Where even that is below grazing, as in every
     # low orbit, the branch is dark, and leaving it out halves the work that follows.
     if np.any(2.0 * pull * np.max(r_km) >= np.square(graze_km)):
-        visible = reach * (w - s) >= graze_km
-        if visible.any():
-            branches = *branches, Branch(-1.0, _density_ratio(w - s, product, visible))
-    return Focusing(w / s, branches, margin, true_s2 < cap_s2)
+        difference = w - s
+        stopped = reach * difference < graze_km
+        if not stopped.all():
+            branches = *branches, Branch(-1.0, _density_ratio(difference, product, stopped))
+    return Focusing(np.divide(w, s, out=w), branches, margin, capped)
 
 
-def _density_ratio(sum_or_difference: Floats, product: Floats, arrives: npt.NDArray[np.bool_]) -> Floats:
-    """(q +- 1)^2 / (4 q) with q = w/s, from w +- s and w s; zero where nothing arrives."""
-    density = np.square(sum_or_difference)
+def _density_ratio(sum_or_difference: Floats, product: Floats, stopped: npt.NDArray[np.bool_]) -> Floats:
+    """(q +- 1)^2 / (4 q) with q = w/s, from w +- s, which is overwritten, and w s; zero where stopped."""
+    density = np.square(sum_or_difference, out=sum_or_difference)
     density /= product
-    density *= 0.25 * arrives
+    density *= 0.25
+    np.copyto(density, 0.0, where=stopped)
     return density
 
 
