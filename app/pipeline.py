@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from app.core.advice.advisory import advisory
+from app.core.advice.advisory import advisory, untrusted
 from app.core.advice.run_sky import RunSky, run_sky
 from app.core.advice.satellite import SatelliteExposure
 from app.core.advice.windows import track_of
@@ -46,4 +46,5 @@ def _marked(inputs: RunInputs, sky: RunSky, satellite: Registered) -> SatelliteR
         bodies = [advisory(inputs, satellite, found.plan.end_unix_s, each) for each in found.findings()]
     except StonechatError as refusal:
         return SatelliteResult(satellite.spacecraft.id, "failed", refusal.detail, ())
-    return SatelliteResult(satellite.spacecraft.id, "computed", None, tuple(bodies))
+    lacking = None if found.plan.end_unix_s else untrusted(inputs, satellite)
+    return SatelliteResult(satellite.spacecraft.id, "computed", lacking, tuple(bodies))

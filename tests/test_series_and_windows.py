@@ -65,11 +65,13 @@ def series(
 def test_the_peak_of_the_series_is_the_peak_of_the_advisory(elements: MeanElements):
     body = advised(elements)
     peak = parse_utc(body["peak_at"])
-    found = series(peak - HOUR_S, 2.0 * HOUR_S, satellite=registered(BOX, elements))
-    per = found.stream_codes.index("PER")
-    whole = 1.0 + found.satellite_by_stream[:, per].max(axis=1)
-    assert_allclose(whole, [row["mid"] for row in body["satellite_enhancement_peak"]], rtol=six_digits)
-    assert found.unix_s[np.argmax(found.satellite_by_stream[1, per])] == peak
+    found = series(peak - 12.0 * HOUR_S, 24.0 * HOUR_S, satellite=registered(BOX, elements))
+    excess = found.satellite_by_stream[:, found.stream_codes.index("PER")]
+    largest = excess.max(axis=1)
+    assert_allclose(
+        1.0 + largest, [row["mid"] for row in body["satellite_enhancement_peak"]], rtol=six_digits
+    )
+    assert excess[1, found.unix_s == peak] >= 0.99 * largest[1]
 
 
 @pytest.mark.parametrize("law", [SUN, FIXED], ids=["sun", "inertial"])

@@ -19,7 +19,7 @@ def run(options: argparse.Namespace) -> int:
     """Compute and publish; say what became of it."""
     settings = load_settings(dir=options.dir)
     as_of_unix_s = time.time() if options.as_of is None else options.as_of
-    with open_store(settings) as store:
+    with open_store(settings, create=False) as store:
         store.require_head()
         with progress_bar() as bar:
             record = run_once(store, settings, as_of_unix_s, options.satellite, shown_on(bar))
@@ -53,6 +53,12 @@ def report(store: Store, record: RunRecord) -> None:
     with store.read() as session:
         for each in run_satellites(session, record.id, limit=max(record.failed, 1), state="failed"):
             print(f"  {each.satellite_id}: {each.reason}")
+        computed = run_satellites(session, record.id, limit=max(record.computed, 1), state="computed")
+    lacking = [each for each in computed if each.reason]
+    if lacking:
+        print(f"{counted(len(lacking), 'satellite')} without a plan:")
+    for each in lacking:
+        print(f"  {each.satellite_id}: {each.reason}")
 
 
 def counted(count: int, noun: str) -> str:

@@ -117,14 +117,13 @@ def _prepare(store: Store, settings: Settings, files: DemoFiles) -> RunRecord:
 
 def _fleet(store: Store, record: RunRecord) -> Iterator[Satellite]:
     with store.read() as session:
-        failed = {
-            e.satellite_id: e.reason for e in run_satellites(session, record.id, limit=PAGE) if e.reason
-        }
+        rows = run_satellites(session, record.id, limit=PAGE, state="failed")
+        failed = {each.satellite_id: each.reason for each in rows}
         for member in list_satellites(session, limit=PAGE):
             found = list_advisories(session, AdvisoryFilter(satellite=member.id), limit=PAGE)
             bodies = tuple(each.body for each in found)
             craft = member.spacecraft
-            yield Satellite(craft.id, craft.name, craft.policy.min_lee_s, failed.get(craft.id), bodies)
+            yield Satellite(craft.id, craft.name, craft.policy, failed.get(craft.id), bodies)
 
 
 def _example(scenario: Scenario, members: Sequence[Satellite]) -> str:

@@ -42,13 +42,14 @@ def run(options: argparse.Namespace) -> int:
     """Load the files in order; 1 when anything in them was refused."""
     settings = load_settings(dir=options.dir)
     refused = total = 0
-    with open_store(settings) as store:
+    with open_store(settings, create=False) as store:
         store.require_head()
         for line in load_files(store, options.files):
             print(f"refused: {line.text}" if line.refused else line.text)
             refused, total = refused + line.refused, total + 1
     if refused:
-        raise InputError(f"refused {refused} of {total} (listed above); the rest is in the database")
+        rest = "nothing was stored" if refused == total else "the rest is in the database"
+        raise InputError(f"refused {refused} of {total} (listed above); {rest}")
     return 0
 
 

@@ -13,7 +13,9 @@ from app.core.sky.times import format_utc
 LEGEND = (
     "Factor: how many times its everyday background the hazard on a face reaches at the worst moment (1.00 = nothing "
     "added), on the worst face. Impacts: expected of the stream / of the background, on the whole satellite from "
-    "onset to end. Lee: the Earth hides every stream that matters."
+    "onset to end. Lee: the Earth hides every stream that matters; 'later': windows come with the plan, once the "
+    "peak is within the days the orbit is trusted; until then figures are averages over the orbit. Each satellite has its "
+    "own thresholds; here they are set low, so that an ordinary year shows all three levels."
 )
 
 
@@ -44,7 +46,9 @@ def _head(scenario: Scenario) -> Iterator[str]:
 
 def _satellite(scenario: Scenario, satellite: Satellite) -> Iterator[str]:
     title = satellite.name if satellite.name == satellite.id else f"{satellite.name} ({satellite.id})"
-    yield f"== {cut(title, WIDTH - 6)} ".ljust(WIDTH, "=")
+    policy = satellite.policy
+    thresholds = f"ready at {policy.ready_at:g}, shelter at {policy.shelter_at:g}"
+    yield f"== {cut(title, WIDTH - 8 - len(thresholds))}, {thresholds} ".ljust(WIDTH, "=")
     if satellite.failure:
         yield from textwrap.wrap(f"not computed: {satellite.failure}", WIDTH)
         return

@@ -112,7 +112,7 @@ def _lee(scenario: Scenario, satellite: Satellite, advisory: Advisory) -> str:
         return "later: windows come with the plan, once the peak is within the time the orbit is trusted"
     if not windows:
         looked = scenario.span(advisory["lee_windows_from"], advisory["lee_windows_until"])
-        minutes = f"{satellite.min_lee_s / 60.0:g} min"
+        minutes = f"{satellite.policy.min_lee_s / 60.0:g} min"
         return f"none from {looked}: the Earth never hides every stream that matters for {minutes} or more"
     peak = parse_utc(advisory["peak_at"])
     nearest = min(windows, key=lambda w: abs(parse_utc(w["start"]) - peak))

@@ -9,6 +9,7 @@ from typing import Any
 from app.core.sky.bodies import wrap_deg
 from app.core.sky.longitude import MEAN_SOLAR_MOTION_DEG_PER_S
 from app.core.sky.times import parse_utc
+from app.core.spacecraft.model import Policy
 
 Advisory = dict[str, Any]
 DAY_S = 86400.0
@@ -20,12 +21,12 @@ MARGIN_DEG = 0.2  # a few hours: the Sun's motion is not quite even
 class Satellite:
     """One satellite's result; ``failure`` says why it could not be computed.
 
-    Its lee windows last at least ``min_lee_s``.
+    ``policy``: its operator's own thresholds.
     """
 
     id: str
     name: str
-    min_lee_s: float
+    policy: Policy
     failure: str | None
     advisories: tuple[Advisory, ...]
 

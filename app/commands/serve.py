@@ -22,7 +22,7 @@ GRACE_S = 20  # for answers under way when the server is told to stop
 def run(options: argparse.Namespace) -> int:
     """Serve until told to stop."""
     settings = load_settings(dir=options.dir)
-    with open_store(settings) as store:
+    with open_store(settings, create=False) as store:
         store.require_head()
         with listen(options.host, options.port) as listener:
             print(f"Serving {address(listener)}; Ctrl-C ends it.", flush=True)

@@ -43,7 +43,10 @@ class Registered:
 
 @dataclass(frozen=True)
 class SatelliteResult:
-    """What became of one satellite: its advisories, or why there are none."""
+    """What became of one satellite: its advisories, or why there are none.
+
+    ``reason`` also says of a computed one what its advisories lack.
+    """
 
     satellite_id: str
     state: Literal["computed", "failed"]

@@ -96,11 +96,19 @@ class Store:
         self.close()
 
 
-def open_store(settings: Settings) -> Store:
-    """Connect. Raises ``SettingsError`` when the database cannot be reached; changes nothing in it."""
+def open_store(settings: Settings, create: bool = True) -> Store:
+    """Connect. Raises ``SettingsError`` when the database cannot be reached; changes nothing in it.
+
+    An SQLite file that does not exist is made, or without ``create`` refused.
+    """
     url = settings.database
     if url.get_backend_name() == "sqlite":
         _require_folder(url)
+        if not create and not Path(url.database or "").exists():
+            raise SettingsError(
+                f"there is no database {Path(url.database or '').resolve()}; name its folder with --dir, or make "
+                "it with `stonechat migrate`"
+            )
     engine = create_engine(url, pool_size=settings.connections, max_overflow=0, pool_pre_ping=True)
     event.listen(
         engine, "connect", _prepare_sqlite if engine.dialect.name == "sqlite" else _prepare_postgresql

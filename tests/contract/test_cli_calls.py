@@ -61,7 +61,9 @@ def test_without_tables_the_remedy_is_named(tmp_path: Path, command: list[str]) 
     write(tmp_path, {"satellites": [SATELLITE]})
     done = run(tmp_path, *command)
     assert is_refusal(done)
-    assert "run `stonechat migrate`" in done.stderr
+    assert "`stonechat migrate`" in done.stderr
+    assert str(tmp_path) in done.stderr  # which folder was meant
+    assert not list(tmp_path.glob("*.sqlite*"))  # a wrong folder is left as it was
 
 
 @pytest.mark.parametrize(

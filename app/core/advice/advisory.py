@@ -12,7 +12,7 @@ from app.core.advice.assessment import Level
 from app.core.advice.satellite import Finding
 from app.core.exposure.damage import critical_mass
 from app.core.exposure.faces import criterion_rows
-from app.core.orbit.elements import SECONDS_PER_DAY, MeanElements
+from app.core.orbit.elements import SECONDS_PER_DAY
 from app.core.run import Registered, RunInputs
 from app.core.sky.bodies import wrap_deg
 from app.core.sky.times import TimeGrid, format_utc
@@ -155,18 +155,25 @@ def _provenance(
         "mass_law_source": law.source,
         "background_source": BACKGROUND_SOURCE,
         "background_speeds_source": analytic_speeds().source,
-        "notes": [*_notes_on_time(inputs, elements, plan_until_unix_s, finding), *_notes(law, finding)],
+        "notes": [*_notes_on_time(inputs, satellite, plan_until_unix_s, finding), *_notes(law, finding)],
     }
 
 
+def untrusted(inputs: RunInputs, satellite: Registered) -> str:
+    """Say why there is no plan for a satellite whose orbit is not trusted at the time of the run."""
+    elements = satellite.elements
+    assert elements is not None  # without an orbit nothing is computed
+    return (
+        f"The orbit of {format_utc(elements.epoch_unix_s)} is trusted {inputs.horizon_days(elements):g} days either "
+        "side of its epoch, not now: only the outlook is given. Send a fresh one"
+    )
+
+
 def _notes_on_time(
-    inputs: RunInputs, elements: MeanElements, plan_until_unix_s: float | None, finding: Finding
+    inputs: RunInputs, satellite: Registered, plan_until_unix_s: float | None, finding: Finding
 ) -> Iterator[str]:
     if plan_until_unix_s is None:
-        yield (
-            f"The orbit is trusted {inputs.horizon_days(elements):g} days either side of its epoch, not now: "
-            "only the outlook is given. Send a fresh one."
-        )
+        yield f"{untrusted(inputs, satellite)}."
     if finding.passage.peak_unix_s < inputs.as_of_unix_s:
         yield "The stream is past its own maximum: times, factors and impacts are of what still lies ahead."
 

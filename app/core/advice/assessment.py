@@ -12,6 +12,7 @@ from app.core.advice.factors import Baseline
 from app.core.spacecraft.model import Policy
 
 Floats = npt.NDArray[np.float64]
+SAME_PEAK = 0.99  # what a minute's grid and the models cannot tell apart
 
 
 class Level(StrEnum):
@@ -41,8 +42,12 @@ class Assessment:
     background_impacts: Floats
 
 
-def assess(base: Baseline, unix_s: Floats, rates: Floats) -> Assessment:
+def assess(base: Baseline, unix_s: Floats, rates: Floats, maximum_unix_s: float) -> Assessment:
     """Judge the hazard rates (C, T) of one stream at instants (T,), T of at least 2.
+
+    The peak is told at the instant nearest to the stream's own maximum at which the largest excess is reached
+    within a hundredth: on a face that looks along the edge of the shadow, many orbits come that close, and the
+    very largest sample would only say where the grid fell.
 
     A trigger counts when the stream adds at least the policy's floor of expected impacts while the trigger
     stands at ``ready_at`` or more. The passage lasts from the first to the last instant at which a counting
@@ -52,21 +57,27 @@ def assess(base: Baseline, unix_s: Floats, rates: Floats) -> Assessment:
     excess = base.trigger_excess(rates)
     counts = _counting(base, unix_s, rates, excess, policy)
     governing = excess[counts].max(axis=0) if counts.any() else excess.max(axis=0)
-    top = int(np.argmax(governing))
-    threshold = policy.ready_at - 1.0 if counts.any() else 0.5 * governing[top]
+    top = _top(governing, unix_s, maximum_unix_s)
+    largest = float(governing.max())
+    threshold = policy.ready_at - 1.0 if counts.any() else 0.5 * largest
     onset, end = crossing_span(unix_s, governing, threshold)
     added = np.tensordot(base.label_weights, rates, axes=1)
     return Assessment(
-        _level(float(governing[top]), policy) if counts.any() else Level.STEADY,
+        _level(largest, policy) if counts.any() else Level.STEADY,
         onset,
         float(unix_s[top]),
         end,
-        1.0 + float(governing[top]),
+        1.0 + largest,
         1.0 + base.row_excess(rates).max(axis=-1),
         1.0 + base.satellite_excess(rates).max(axis=-1),
         integral(unix_s, added, onset, end),
         base.label_background_per_s * (end - onset),
     )
+
+
+def _top(governing: Floats, unix_s: Floats, maximum_unix_s: float) -> int:
+    near_top = np.flatnonzero(governing >= SAME_PEAK * governing.max())
+    return int(near_top[np.argmin(np.abs(unix_s[near_top] - maximum_unix_s))])
 
 
 def _counting(

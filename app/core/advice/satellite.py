@@ -80,7 +80,7 @@ class SatelliteExposure:
         if len(unix_s) < 2:
             return None
         base = self.baselines.at(passage.peak_unix_s)
-        judged = assess(base, unix_s, ahead)
+        judged = assess(base, unix_s, ahead, passage.peak_unix_s)
         return Finding(passage, self._stream(passage), "outlook", base, judged, None, (), capped)
 
     def _plan_finding(self, passage: Passage, index: int, outlook: Floats) -> Finding | None:
@@ -94,7 +94,7 @@ class SatelliteExposure:
             return None
         base = self.baselines.at(passage.peak_unix_s)
         rates = np.concatenate([self.plan.rates[:, stream, part], outlook[:, after]], axis=1)
-        judged = assess(base, unix_s, rates)
+        judged = assess(base, unix_s, rates, passage.peak_unix_s)
         cover = _cover(judged, float(self.plan.track.unix_s[-1]))
         lee = self._lee_windows(stream, base, cover) if cover else ()
         capped = bool(self.plan.margin_and_cap[1][stream, part].any())

@@ -25,7 +25,7 @@ def profile(peak_excess: float) -> np.ndarray:
 
 
 def judge(peak_excess: float, **policy: float) -> Assessment:
-    return assess(judged_by([BACKGROUND], **policy), UNIX_S, profile(peak_excess))
+    return assess(judged_by([BACKGROUND], **policy), UNIX_S, profile(peak_excess), PEAK)
 
 
 def reach_s(peak_excess: float, threshold: float) -> float:
@@ -93,12 +93,12 @@ def on_two_faces(faces: tuple[Face, ...], **policy: float) -> tuple[Baseline, np
 
 def test_a_sensitive_face_raises_the_level_alone():
     base, rates = on_two_faces(BOTH, min_expected_impacts=0.0)
-    assert assess(base, UNIX_S, rates).level is Level.SHELTER
+    assert assess(base, UNIX_S, rates, PEAK).level is Level.SHELTER
 
 
 def test_a_face_that_is_not_sensitive_does_not():
     base, rates = on_two_faces(DULL, min_expected_impacts=0.0)
-    judged = assess(base, UNIX_S, rates)
+    judged = assess(base, UNIX_S, rates, PEAK)
     assert judged.level is Level.STEADY
     assert_allclose(judged.row_peak, [10.0, 1.1])  # it is told all the same
 
@@ -106,14 +106,14 @@ def test_a_face_that_is_not_sensitive_does_not():
 def test_the_floor_counts_the_impacts_of_the_trigger_itself():
     # the large face has plenty of impacts; those on the small sensitive one are too few to cry wolf over
     base, rates = on_two_faces(BOTH, min_expected_impacts=1e-6)
-    judged = assess(base, UNIX_S, rates)
+    judged = assess(base, UNIX_S, rates, PEAK)
     assert judged.impacts[0] > 1e-2
     assert judged.level is Level.STEADY
 
 
 def test_a_trigger_below_the_floor_does_not_stretch_a_passage_that_counts():
     base, rates = on_two_faces(BOTH, min_expected_impacts=1e-6)
-    judged = assess(base, UNIX_S, rates * np.array([[1.0], [20.0]]))
+    judged = assess(base, UNIX_S, rates * np.array([[1.0], [20.0]]), PEAK)
     assert judged.level is Level.SHELTER  # 1 + 2.0 on the satellite
     assert_allclose(judged.governing_peak, 3.0, rtol=1e-5)
     assert_allclose(PEAK - judged.onset_unix_s, reach_s(2.0, 0.5), atol=ten_seconds)
@@ -122,29 +122,41 @@ def test_a_trigger_below_the_floor_does_not_stretch_a_passage_that_counts():
 def test_each_label_has_impacts_of_its_own():
     faces = (Face("front", UP, 2.0, (MASS, CHARGE)),)
     base = judged_by([BACKGROUND, 10.0 * BACKGROUND], faces)
-    judged = assess(base, UNIX_S, np.concatenate([profile(4.0), profile(2.0)]))
+    judged = assess(base, UNIX_S, np.concatenate([profile(4.0), profile(2.0)]), PEAK)
     assert_allclose(judged.impacts[0] / judged.impacts[1], 2.0)
     assert_allclose(judged.satellite_peak, [5.0, 1.2])
 
 
 def test_shelter_gaps_between_do_not_end_a_passage():
     lit = np.sin(2.0 * np.pi * (UNIX_S - PEAK) / 5550.0 + 1.0) > -0.3
-    judged = assess(judged_by([BACKGROUND]), UNIX_S, profile(4.0) * lit)
+    judged = assess(judged_by([BACKGROUND]), UNIX_S, profile(4.0) * lit, PEAK)
     assert_allclose(judged.end_unix_s - judged.onset_unix_s, 2.0 * reach_s(4.0, 0.5), atol=2 * 3000.0)
 
 
 def test_a_passage_under_way_begins_with_the_series():
     after = UNIX_S >= PEAK + 3600.0
-    judged = assess(judged_by([BACKGROUND]), UNIX_S[after], profile(4.0)[:, after])
+    judged = assess(judged_by([BACKGROUND]), UNIX_S[after], profile(4.0)[:, after], PEAK)
     assert judged.onset_unix_s == judged.peak_unix_s == UNIX_S[after][0]
 
 
 def test_a_stream_that_is_never_met_is_steady_with_finite_numbers():
-    judged = assess(judged_by([BACKGROUND], min_expected_impacts=0.0), UNIX_S, 0.0 * profile(1.0))
+    judged = assess(judged_by([BACKGROUND], min_expected_impacts=0.0), UNIX_S, 0.0 * profile(1.0), PEAK)
     assert judged.level is Level.STEADY
     assert (judged.onset_unix_s, judged.end_unix_s) == (UNIX_S[0], UNIX_S[-1])
     assert judged.impacts.tolist() == [0.0]
     assert judged.governing_peak == 1.0
+
+
+def test_the_peak_is_told_where_the_stream_itself_is_strongest():
+    # one sample a little above the others, half a day off: the same peak to a hundredth, told at the maximum
+    rates = profile(4.0)
+    odd = int(np.argmin(np.abs(UNIX_S - PEAK - 43_200.0)))
+    rates[0, odd] = BACKGROUND * 4.0 * 1.005
+    judged = assess(judged_by([BACKGROUND]), UNIX_S, rates, PEAK)
+    assert abs(judged.peak_unix_s - PEAK) <= ten_seconds
+    assert_allclose(judged.governing_peak, 1.0 + 4.0 * 1.005)
+    rates[0, odd] = BACKGROUND * 4.0 * 1.02
+    assert assess(judged_by([BACKGROUND]), UNIX_S, rates, PEAK).peak_unix_s == UNIX_S[odd]
 
 
 def test_crossings_are_interpolated():
