@@ -53,6 +53,7 @@ ORBIT: dict[str, Any] = {
     "age_days": 0.25,
     "as_of": "2026-08-10T00:00:00Z",
     "omm": OMM,
+    "notes": [],
 }
 OMM_KVN = "\n".join(f"{name} = {value}" for name, value in OMM.items()) + "\n"
 OMM_CSV = ",".join(OMM) + "\n" + ",".join(str(value) for value in OMM.values()) + "\n"

@@ -153,6 +153,7 @@ class OrbitOut(Shape):
     age_days: FiniteFloat
     as_of: Time
     omm: Omm
+    notes: list[str]
 
 
 class OnDemandProvenance(Shape):

@@ -14,8 +14,8 @@ LEGEND = (
     "Factor: how many times its everyday background the hazard on a face reaches at the worst moment (1.00 = nothing "
     "added), on the worst face. Impacts: expected of the stream / of the background, on the whole satellite from "
     "onset to end. Lee: the Earth hides every stream that matters; 'later': windows come with the plan, once the "
-    "peak is within the days the orbit is trusted; until then figures are averages over the orbit. Each satellite has its "
-    "own thresholds; here they are set low, so that an ordinary year shows all three levels."
+    "peak is within the days the orbit is trusted; until then figures are averages over the orbit. Each satellite "
+    "has its own thresholds; here they are set low, so that an ordinary year shows all three levels."
 )
 
 

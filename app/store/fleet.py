@@ -73,6 +73,11 @@ def get_satellite(session: Session, satellite_id: str) -> SatelliteRecord:
     return _record(_registered(session, satellite_id))
 
 
+def was_ever_registered(session: Session, satellite_id: str) -> bool:
+    """Say whether there is, or was, a satellite of this id."""
+    return session.get(Satellite, satellite_id) is not None
+
+
 def list_satellites(session: Session, after: str | None = None, limit: int = 100) -> list[SatelliteRecord]:
     """Return registered satellites by id, from the first one after ``after``."""
     statement = select(Satellite).where(Satellite.status == "registered").order_by(Satellite.id).limit(limit)

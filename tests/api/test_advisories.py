@@ -76,3 +76,8 @@ def test_removing_a_satellite_withdraws_its_advisories(filled: TestClient) -> No
 def test_unknown_advisories_are_not_found(both: TestClient, name: str) -> None:
     assert is_problem(both.get(f"/v1/advisories/{name}"), 404)
     assert is_problem(both.get(f"/v1/advisories/{name}/revisions"), 404)
+
+
+@pytest.mark.parametrize("query", ["satellite=kestrel-9", "stream=XYZ"])
+def test_a_name_nobody_bears_is_refused_not_taken_for_all_clear(client: TestClient, query: str) -> None:
+    assert is_problem(client.get(f"/v1/advisories?{query}"), 422, field=query.partition("=")[0])

@@ -98,3 +98,20 @@ def test_if_match_guards_the_orbit_too(client: TestClient) -> None:
     mine = {"If-Match": client.get(ADDRESS).headers["etag"]}
     assert client.put(ADDRESS, json={**examples.OMM, "MEAN_ANOMALY": 1.0}, headers=mine).status_code == 200
     assert is_problem(client.put(ADDRESS, json=examples.OMM, headers=mine), 412)
+
+
+def test_an_orbit_that_names_another_satellite_is_refused(client: TestClient) -> None:
+    put_satellite(client)
+    put_satellite(client, "kestrel-2")
+    wrong = {**examples.OMM, "OBJECT_NAME": "KESTREL-2"}
+    assert is_problem(client.put(ADDRESS, json=wrong), 422, where="OBJECT_NAME")
+    assert client.get(ADDRESS).status_code == 404  # nothing was stored
+    assert client.put(ADDRESS, json={**examples.OMM, "OBJECT_NAME": "ANOTHER NAME"}).status_code == 200
+
+
+def test_it_is_said_when_an_older_orbit_replaces_a_newer_one(client: TestClient) -> None:
+    put_satellite(client)
+    assert client.put(ADDRESS, json=examples.OMM).json()["notes"] == []
+    older = {**examples.OMM, "EPOCH": "2026-07-10T00:00:00"}
+    (note,) = client.put(ADDRESS, json=older).json()["notes"]
+    assert "older than the one it replaces" in note

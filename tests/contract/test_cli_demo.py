@@ -33,7 +33,7 @@ def once(tmp_path_factory: pytest.TempPathFactory) -> Done:
 
 
 def section(text: str, satellite: str) -> str:
-    return text.split(f"({satellite}) =")[1].split("\n== ")[0]
+    return text.split(f"({satellite}), ready at")[1].split("\n== ")[0]
 
 
 def test_it_ends_well_and_says_nothing_beside(once: Done) -> None:

@@ -7,17 +7,21 @@ from typing import Annotated
 
 from fastapi import APIRouter, Path, Query
 from pydantic import Field
+from sqlalchemy.orm import Session
 from starlette.responses import Response
 
 from app.api import docs
 from app.api.caching import reply
-from app.api.deps import AskedNow, existing_id
+from app.api.deps import Asked, AskedNow, existing_id
 from app.api.paging import Page, Pager
 from app.api.queries import Instant
 from app.api.schemas import Advisory, ItemsPage, Level, Status
 from app.core.sky.times import parse_utc
+from app.errors import FieldError
+from app.formats.text import shown
 from app.store.advisories import AdvisoryFilter, AdvisoryRecord, get_advisory, list_advisories, revisions
 from app.store.clock import from_unix
+from app.store.fleet import was_ever_registered
 
 router = APIRouter(prefix="/v1/advisories", tags=["advisories"])
 AdvisoryId = Annotated[str, Path(description="Passage and satellite.", examples=["PER-2026.kestrel-1"])]
@@ -53,6 +57,7 @@ def read_advisories(asked: AskedNow, query: Annotated[AdvisoryQuery, Query()]) -
     pager = Pager(asked.request, query, (int, str))
     after, wanted = pager.after, query.wanted
     with asked.reading() as (session, tag):
+        _check_names(asked, session, query)
         key = (int(after[0]), str(after[1])) if after else None
         rows = list_advisories(session, wanted, key, pager.fetch)
     shown, headers = pager.cut(rows, lambda row: (row.change_seq, row.id), _body)
@@ -81,6 +86,19 @@ def read_revisions(asked: AskedNow, advisory_id: AdvisoryId, page: Annotated[Pag
         rows = revisions(session, existing_id(advisory_id, "advisory"), number, pager.fetch)
     shown, headers = pager.cut(rows, lambda row: (row.revision,), _body)
     return reply(shown, tag, headers)
+
+
+def _check_names(asked: Asked, session: Session, query: AdvisoryQuery) -> None:
+    """Refuse a name nobody bears: an empty list would look as if all were clear."""
+    if query.satellite is not None and not was_ever_registered(session, query.satellite):
+        raise FieldError(
+            "satellite", f"there is no satellite {shown(query.satellite)}; GET /v1/satellites lists them"
+        )
+    codes = {entry.code for entry in asked.context.catalogue.entries}
+    if query.stream is not None and query.stream not in codes:
+        raise FieldError(
+            "stream", f"there is no stream {shown(query.stream)}; GET /v1/streams lists the codes"
+        )
 
 
 def _body(record: AdvisoryRecord) -> dict[str, object]:

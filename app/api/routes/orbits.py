@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import re
+from collections.abc import Sequence
 from contextlib import suppress
 from typing import Any
 
@@ -21,8 +23,9 @@ from app.core.orbit.elements import SECONDS_PER_DAY, MeanElements
 from app.errors import FileError, NotFoundError
 from app.formats.omm import sniff
 from app.formats.orbit import NOTATIONS, omm_object, read_orbits
+from app.formats.satellite_schema import ID_PATTERN
 from app.formats.text import decode
-from app.store.fleet import OrbitRecord, current_orbit, put_orbit
+from app.store.fleet import OrbitRecord, current_orbit, get_satellite, put_orbit
 
 router = APIRouter(prefix="/v1/satellites", tags=["register"])
 OMM_SCHEMA = {"$ref": docs.TEMPLATE.format(model="Omm")}
@@ -65,9 +68,36 @@ def write_orbit(asked: AskedNow, satellite_id: SatelliteId, data: RawBody) -> Re
     hour_unix_s = asked.context.hour_unix_s()
     with asked.context.store.write() as session:
         check_preconditions(asked.request, _current_tag(asked, session, satellite_id, hour_unix_s))
+        _check_owner(session, satellite_id, elements)
+        notes = _notes(session, satellite_id, elements)
         put_orbit(session, satellite_id, elements, source_format, clock=asked.context.wall)
         record = current_orbit(session, satellite_id)
-    return json_response(_shown(record, hour_unix_s))
+    return json_response(_shown(record, hour_unix_s, notes))
+
+
+def _check_owner(session: Session, satellite_id: str, elements: MeanElements) -> None:
+    """Refuse a set that names another registered satellite: it was sent to the wrong address."""
+    for keyword, text in (("OBJECT_NAME", elements.object_name), ("OBJECT_ID", elements.object_id)):
+        other = text.casefold()
+        if other == satellite_id or not re.fullmatch(ID_PATTERN, other):
+            continue
+        with suppress(NotFoundError):
+            get_satellite(session, other)
+            raise FileError(
+                SOURCE, keyword, f"is '{text}': that is satellite '{other}', not '{satellite_id}'"
+            )
+
+
+def _notes(session: Session, satellite_id: str, elements: MeanElements) -> list[str]:
+    """What to look at twice before trusting the new orbit."""
+    with suppress(NotFoundError):
+        before = current_orbit(session, satellite_id).elements
+        if elements.epoch_unix_s < before.epoch_unix_s:
+            former = unix_text(before.epoch_unix_s)
+            return [
+                f"This orbit is older than the one it replaces, of {former}; send that one again to go back."
+            ]
+    return []
 
 
 def _one(data: bytes, media_type: str | None) -> MeanElements:
@@ -92,7 +122,7 @@ def _format(data: bytes, media_type: str | None) -> str:
     return f"omm-{kind}" if kind else "tle"
 
 
-def _shown(record: OrbitRecord, hour_unix_s: float) -> dict[str, Any]:
+def _shown(record: OrbitRecord, hour_unix_s: float, notes: Sequence[str] = ()) -> dict[str, Any]:
     epoch_unix_s = record.elements.epoch_unix_s
     return {
         "satellite": record.satellite_id,
@@ -102,6 +132,7 @@ def _shown(record: OrbitRecord, hour_unix_s: float) -> dict[str, Any]:
         "age_days": round((hour_unix_s - epoch_unix_s) / SECONDS_PER_DAY, 3),
         "as_of": unix_text(hour_unix_s),
         "omm": omm_object(record.elements),
+        "notes": list(notes),
     }
 
 
