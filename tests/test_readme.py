@@ -85,6 +85,6 @@ def test_every_call_listed_is_in_the_api(tmp_path: Path) -> None:
     rows = [line.split("|")[1] for line in table.splitlines() if line.startswith("| `")]
     calls = [call for row in rows for call in re.findall(r"(/[a-z.{}/]+)", row)]
     assert len(calls) > 15
-    operation = {"/livez", "/readyz", "/metrics", "/openapi.json"}
-    missing = [c for c in calls if c not in operation and re.sub(r"\{\w+\}", "{}", f"/v1{c}") not in known]
+    elsewhere = {"/livez", "/readyz", "/metrics", "/openapi.json", "/v"}  # the last from "not under /v1"
+    missing = [c for c in calls if c not in elsewhere and re.sub(r"\{\w+\}", "{}", f"/v1{c}") not in known]
     assert missing == []
