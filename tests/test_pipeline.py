@@ -18,12 +18,13 @@ import app.pipeline
 from app.catalogue_file import load_catalogue
 from app.core.orbit.elements import MeanElements
 from app.core.sky.times import parse_utc
-from app.core.spacecraft.model import Criterion, CriterionKind
+from app.core.spacecraft.model import Criterion, CriterionKind, Policy
 from app.core.streams.model import Component, Stream
 from app.pipeline import Registered, RunInputs, SatelliteResult, compute_satellites
 from tests.core.advice.samples import (
     AS_OF_UNIX_S,
     CAPRICORNIDS,
+    CHARGE,
     DAY_S,
     LOW,
     PERSEIDS,
@@ -32,6 +33,7 @@ from tests.core.advice.samples import (
     SPRING,
     TALL,
     WALL,
+    box,
     catalogue,
     inputs,
     plate,
@@ -285,3 +287,19 @@ def test_a_satellite_without_a_plan_says_why():
     assert "only the outlook" in stale.reason
     (fresh,) = compute_satellites(inputs(), [sat("fresh", LOW)])
     assert fresh.reason is None
+
+
+def test_a_level_does_not_fall_while_the_peak_still_lies_ahead():
+    """The floor is of the whole passage, not of what is left of it."""
+    craft = box(CHARGE, policy=Policy(ready_at=1.01, shelter_at=1.02, min_expected_impacts=0.0))
+    (early,) = compute_satellites(inputs(), [Registered(craft, LOW)])
+    whole = next(a for a in early.advisories if a["stream"] == "PER")
+    floor = 0.9 * whole["expected_impacts"][0]["mid"]
+    strict = replace(craft, policy=replace(craft.policy, min_expected_impacts=floor))
+    levels = set()
+    for days in (0.0, 1.0, 2.0, 2.5):
+        moment = inputs(as_of_unix_s=AS_OF_UNIX_S + days * DAY_S)
+        (result,) = compute_satellites(moment, [Registered(strict, LOW)])
+        levels.add(next(a for a in result.advisories if a["stream"] == "PER")["level"])
+    assert levels == {whole["level"]}
+    assert whole["level"] != "steady"

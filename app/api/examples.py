@@ -258,6 +258,7 @@ READY: dict[str, Any] = {
     "schema": "newest",
     "published_run": RUN["id"],
     "published_run_age_s": 5400.0,
+    "published_run_failed": 1,
 }
 
 

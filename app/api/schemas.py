@@ -304,6 +304,7 @@ class Ready(Shape):
     schema_: Literal["newest"] = Field(alias="schema")
     published_run: str | None
     published_run_age_s: FiniteFloat | None
+    published_run_failed: int
 
 
 class Alive(Shape):

@@ -9,6 +9,7 @@ from typing import Any
 
 from tqdm import tqdm
 
+from app.errors import StonechatError
 from app.jobs.run import Progress, run_once
 from app.settings import load_settings
 from app.store.runs import RunRecord, run_satellites
@@ -24,6 +25,10 @@ def run(options: argparse.Namespace) -> int:
         with progress_bar() as bar:
             record = run_once(store, settings, as_of_unix_s, options.satellite, shown_on(bar))
         report(store, record)
+    if record.failed and not record.computed:
+        raise StonechatError(
+            "no satellite could be computed (listed above); what was published before still stands"
+        )
     return 0
 
 

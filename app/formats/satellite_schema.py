@@ -91,7 +91,10 @@ CriterionIn = Annotated[PenetrationIn | ChargeIn | EnergyIn | MassIn, Field(disc
 
 
 class FaceIn(_Strict):
-    """A flat outer surface; ``normal`` points outward in body axes and need not be of unit length."""
+    """A flat outer surface; ``normal`` points outward in body axes and need not be of unit length.
+
+    ``weight`` is kept for the attitude advice of a later version; nothing computed now depends on it.
+    """
 
     name: Name
     normal: Components3

@@ -14,9 +14,13 @@ from app.store.tables import Satellite
 
 @dataclass(frozen=True)
 class Freshness:
-    """The run published last. ``waiting_since``: while there is none, when the first satellite was given."""
+    """The run published last, and how many of its satellites failed.
+
+    ``waiting_since``: while there is none, when the first satellite was given.
+    """
 
     run_id: str | None
+    failed: int
     published_at: datetime | None
     waiting_since: datetime | None
 
@@ -25,6 +29,6 @@ def freshness(session: Session) -> Freshness:
     """Look at the run published last; before the first, at how long satellites have been waiting for it."""
     run = latest_published(session)
     if run is not None:
-        return Freshness(run.id, run.finished_at, None)
+        return Freshness(run.id, run.failed, run.finished_at, None)
     first = select(func.min(Satellite.changed_at)).where(Satellite.status == "registered")
-    return Freshness(None, None, session.scalars(first).one())
+    return Freshness(None, 0, None, session.scalars(first).one())

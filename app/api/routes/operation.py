@@ -93,6 +93,7 @@ def _ready(found: Freshness, now: datetime) -> dict[str, Any]:
         "schema": "newest",
         "published_run": found.run_id,
         "published_run_age_s": age_s,
+        "published_run_failed": found.failed,
     }
 
 

@@ -116,11 +116,18 @@ def _lee(finding: Finding) -> Iterator[dict[str, Any]]:
 
 def _actions(body: dict[str, Any], level: Level) -> Iterator[str]:
     if level is Level.STEADY:
-        yield "Nothing beyond routine operations is advised for this passage."
+        if body["depth"] == "outlook":
+            yield (
+                "On the average over the orbit nothing beyond routine operations is advised. The plan, which looks "
+                "at each minute, may ask for more: send a fresh orbit before the peak."
+            )
+        else:
+            yield "Nothing beyond routine operations is advised for this passage."
         return
+    begin = "Now" if body["onset"] == body["issued_at"] else f"Prepare before {body['onset']}"
     yield (
-        f"Prepare before {body['onset']}: staff the console and keep manoeuvres and other critical operations "
-        f"out of {body['onset']} to {body['end']}, most of all near {body['peak_at']}."
+        f"{begin}: staff the console and keep manoeuvres and other critical operations out of {body['onset']} to "
+        f"{body['end']}, most of all near {body['peak_at']}."
     )
     if level is Level.SHELTER:
         yield (
@@ -174,6 +181,8 @@ def _notes_on_time(
 ) -> Iterator[str]:
     if plan_until_unix_s is None:
         yield f"{untrusted(inputs, satellite)}."
+    if finding.assessment.onset_unix_s == inputs.as_of_unix_s:
+        yield "The passage is under way: onset is the time of this run, and impacts are of what still lies ahead."
     if finding.passage.peak_unix_s < inputs.as_of_unix_s:
         yield "The stream is past its own maximum: times, factors and impacts are of what still lies ahead."
 

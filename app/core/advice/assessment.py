@@ -42,26 +42,31 @@ class Assessment:
     background_impacts: Floats
 
 
-def assess(base: Baseline, unix_s: Floats, rates: Floats, maximum_unix_s: float) -> Assessment:
+def assess(
+    base: Baseline, unix_s: Floats, rates: Floats, maximum_unix_s: float, added: Floats | None = None
+) -> Assessment:
     """Judge the hazard rates (C, T) of one stream at instants (T,), T of at least 2.
 
     The peak is told at the instant nearest to the stream's own maximum at which the largest excess is reached
     within a hundredth: on a face that looks along the edge of the shadow, many orbits come that close, and the
     very largest sample would only say where the grid fell.
 
-    A trigger counts when the stream adds at least the policy's floor of expected impacts while the trigger
-    stands at ``ready_at`` or more. The passage lasts from the first to the last instant at which a counting
-    trigger does so; when none does, while the largest trigger stands above half of its peak excess.
+    A trigger counts when it reaches ``ready_at`` and the whole passage adds at least the policy's floor of
+    expected impacts to it: ``added`` (K,), so that a level does not fall as a passage goes by; without it these
+    instants are taken for the whole. The passage lasts from the first to the last instant at which a counting
+    trigger stands at ``ready_at``; when none does, while the largest trigger stands above half of its peak excess.
     """
+    if added is None:
+        added = trigger_impacts(base, unix_s, rates)
     policy = base.spacecraft.policy
     excess = base.trigger_excess(rates)
-    counts = _counting(base, unix_s, rates, excess, policy)
+    counts = (excess.max(axis=-1) >= policy.ready_at - 1.0) & (added >= policy.min_expected_impacts)
     governing = excess[counts].max(axis=0) if counts.any() else excess.max(axis=0)
     top = _top(governing, unix_s, maximum_unix_s)
     largest = float(governing.max())
     threshold = policy.ready_at - 1.0 if counts.any() else 0.5 * largest
     onset, end = crossing_span(unix_s, governing, threshold)
-    added = np.tensordot(base.label_weights, rates, axes=1)
+    impacts_per_s = np.tensordot(base.label_weights, rates, axes=1)
     return Assessment(
         _level(largest, policy) if counts.any() else Level.STEADY,
         onset,
@@ -70,7 +75,7 @@ def assess(base: Baseline, unix_s: Floats, rates: Floats, maximum_unix_s: float)
         1.0 + largest,
         1.0 + base.row_excess(rates).max(axis=-1),
         1.0 + base.satellite_excess(rates).max(axis=-1),
-        integral(unix_s, added, onset, end),
+        integral(unix_s, impacts_per_s, onset, end),
         base.label_background_per_s * (end - onset),
     )
 
@@ -80,16 +85,10 @@ def _top(governing: Floats, unix_s: Floats, maximum_unix_s: float) -> int:
     return int(near_top[np.argmin(np.abs(unix_s[near_top] - maximum_unix_s))])
 
 
-def _counting(
-    base: Baseline, unix_s: Floats, rates: Floats, excess: Floats, policy: Policy
-) -> npt.NDArray[np.bool_]:
-    impacts = base.trigger_impacts_per_s(rates)
-    enough = np.zeros(len(excess), dtype=bool)
-    for index in np.flatnonzero(excess.max(axis=-1) >= policy.ready_at - 1.0):
-        span = crossing_span(unix_s, excess[index], policy.ready_at - 1.0)
-        added = integral(unix_s, impacts[index : index + 1], *span)[0]
-        enough[index] = added >= policy.min_expected_impacts
-    return enough
+def trigger_impacts(base: Baseline, unix_s: Floats, rates: Floats) -> Floats:
+    """Expected impacts of the stream behind each trigger, (K,), from the first instant to the last."""
+    impacts_per_s = base.trigger_impacts_per_s(rates)
+    return integral(unix_s, impacts_per_s, float(unix_s[0]), float(unix_s[-1]))
 
 
 def _level(excess: float, policy: Policy) -> Level:

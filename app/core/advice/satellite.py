@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
-from app.core.advice.assessment import Assessment, Level, assess
+from app.core.advice.assessment import Assessment, Level, assess, trigger_impacts
 from app.core.advice.baselines import Baselines
 from app.core.advice.events import Interval
 from app.core.advice.factors import Baseline
@@ -80,7 +80,8 @@ class SatelliteExposure:
         if len(unix_s) < 2:
             return None
         base = self.baselines.at(passage.peak_unix_s)
-        judged = assess(base, unix_s, ahead, passage.peak_unix_s)
+        whole = trigger_impacts(base, self.sky.outlook.fine_unix_s[index], rates)
+        judged = assess(base, unix_s, ahead, passage.peak_unix_s, whole)
         return Finding(passage, self._stream(passage), "outlook", base, judged, None, (), capped)
 
     def _plan_finding(self, passage: Passage, index: int, outlook: Floats) -> Finding | None:
@@ -94,7 +95,8 @@ class SatelliteExposure:
             return None
         base = self.baselines.at(passage.peak_unix_s)
         rates = np.concatenate([self.plan.rates[:, stream, part], outlook[:, after]], axis=1)
-        judged = assess(base, unix_s, rates, passage.peak_unix_s)
+        whole = trigger_impacts(base, fine_unix_s, outlook)
+        judged = assess(base, unix_s, rates, passage.peak_unix_s, whole)
         cover = _cover(judged, float(self.plan.track.unix_s[-1]))
         lee = self._lee_windows(stream, base, cover) if cover else ()
         capped = bool(self.plan.margin_and_cap[1][stream, part].any())

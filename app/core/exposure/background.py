@@ -23,9 +23,12 @@ from app.core.streams.sporadic import SPORADIC_DENSITY_KG_M3, SpeedDistribution,
 
 Floats = npt.NDArray[np.float64]
 Nodes = tuple[int, int]  # polar, azimuth
-FINE: Nodes = (16, 32)  # 0.1 % on a face at the horizon of a low orbit
-COARSE: Nodes = (8, 16)  # enough where a dozen phases are averaged
-SAME_SKY_ECCENTRICITY = 0.003  # below it every phase of a nadir-pointing orbit sees the same sky within 0.5 %
+FINE: Nodes = (
+    16,
+    32,
+)  # 0.1 % of the free-space flux: 0.2 % on a face at the horizon of a low orbit, 1 % on one below
+COARSE: Nodes = (8, 16)  # where a dozen phases are averaged: up to 3 % on a face that looks at the Earth
+SAME_SKY_ECCENTRICITY = 0.003  # below it the places at the mean distance stand for the whole orbit
 PHASES, ECCENTRIC_PHASES = 12, 24
 ECCENTRIC = 0.1
 SPEED_STEP_KM_S = 0.01
@@ -47,7 +50,7 @@ def orbit_background(
     ``ellipse``: one orbit, vectors (3,); ``sun_km`` (3,) at its date.
     """
     if follows_orbit(spacecraft) and ellipse.eccentricity < SAME_SKY_ECCENTRICITY:
-        count, nodes = 1, FINE
+        count, nodes = 2, FINE  # the two places at the mean distance
     else:
         count, nodes = (ECCENTRIC_PHASES if ellipse.eccentricity > ECCENTRIC else PHASES), COARSE
     r_km, v_km_s, shares = ellipse.points(count)
