@@ -149,3 +149,9 @@ def test_interrupted_while_it_computes_it_puts_its_folder_away(tmp_path: Path) -
     _, errors = process.communicate(timeout=PATIENCE_S)
     assert (process.returncode, errors) == (130, "stonechat: interrupted\n")
     assert os.listdir(temporary) == []
+
+
+def test_readme_shows_what_is_printed(once: Done) -> None:
+    readme = (Path(__file__).parents[2] / "README.md").read_text(encoding="utf-8")
+    start = readme.index("```text\nTo act on:") + len("```text\n")
+    assert readme[start : readme.index("```\n", start)] in once.stdout
