@@ -72,7 +72,8 @@ def _draft(head: Head | None, body: dict[str, Any], as_of_unix_s: float) -> Draf
     changes = rule.changes(head.body, body, as_of_unix_s)
     if not changes:
         return None
-    return _numbered(head.revision + 1, "current", {**body, "changes": changes})
+    why = rule.causes(head.body, body)
+    return _numbered(head.revision + 1, "current", {**body, "changes": [*changes, *why]})
 
 
 def _numbered(number: int, status: str, body: dict[str, Any]) -> Draft:

@@ -17,6 +17,19 @@ Change = dict[str, str]
 FACTOR_CHANGE = 0.10
 TIME_CHANGE_S = 600.0
 COVERAGE_CHANGE_S = 86400.0
+DEPTH_CAUSES = {
+    (
+        "outlook",
+        "plan",
+    ): "the plan, which looks at each minute where only the average over the orbit was known",
+    ("plan", "outlook"): "an orbit no longer trusted for the peak: an average over the orbit is no all-clear",
+}
+PROVENANCE_CAUSES = {
+    "orbit_epoch": "a new orbit",
+    "catalogue_digest": "another stream catalogue",
+    "mass_law": "another mass law",
+    "software": "another version of the program",
+}
 TIMES = {"onset": "onset", "peak_at": "peak", "end": "end"}
 
 
@@ -38,6 +51,18 @@ def changes(previous: Body, new: Body, as_of_unix_s: float) -> list[Change]:
         *_times(previous, new, as_of_unix_s),
         *_windows(previous, new, as_of_unix_s),
     ]
+
+
+def causes(previous: Body, new: Body) -> list[Change]:
+    """Say why something moved, as far as the two revisions tell; empty when only time has passed."""
+    found = [DEPTH_CAUSES[pair]] if (pair := (previous["depth"], new["depth"])) in DEPTH_CAUSES else []
+    before, after = previous["provenance"], new["provenance"]
+    found += [
+        f"{cause} ({after[field]})"
+        for field, cause in PROVENANCE_CAUSES.items()
+        if field in after and before.get(field) != after[field]
+    ]
+    return [{"what": "cause", "text": f"Because of {'; '.join(found)}."}] if found else []
 
 
 def withdrawal(previous: Body, as_of_unix_s: float, reason: str) -> dict[str, Any]:

@@ -7,7 +7,7 @@ from typing import Any
 
 import pytest
 
-from app.core.advice.revision import again, changes, first, withdrawal
+from app.core.advice.revision import again, causes, changes, first, withdrawal
 from app.core.sky.times import format_utc, parse_utc
 from tests.samples import AS_OF_UNIX_S, DAY_S, band, body
 
@@ -171,3 +171,16 @@ def test_a_withdrawal_leaves_nothing_to_act_on_and_its_model_untouched() -> None
     assert after["changes"] == [{"what": "withdrawn", "text": "The satellite was removed."}]
     assert all(after[name] == before[name] for name in ("id", "onset", "peak_at", "end", "caution"))
     assert len(after["actions"]) == 1
+
+
+def because(before: dict[str, Any], after: dict[str, Any]) -> str:
+    return " ".join(change["text"] for change in causes(body("a", **before), body("a", **after)))
+
+
+def test_a_cause_is_told_as_far_as_it_is_known() -> None:
+    assert because({}, {}) == ""
+    assert "the plan, which looks at each minute" in because({"depth": "outlook"}, {"depth": "plan"})
+    assert "no all-clear" in because({"depth": "plan"}, {"depth": "outlook"})
+    epoch = "2026-08-11T00:00:00Z"
+    told = because({}, {"provenance": {"software": "stonechat", "orbit_epoch": epoch}})
+    assert told == f"Because of a new orbit ({epoch})."
