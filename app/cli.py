@@ -17,7 +17,7 @@ from types import FrameType
 from sqlalchemy.exc import SQLAlchemyError
 
 from app import __version__
-from app.commands.files import os_problem
+from app.commands.files import os_problem, printable
 from app.core.advice.advisory import CAUTION
 from app.core.sky.times import parse_utc
 from app.errors import FieldError, StonechatError
@@ -36,6 +36,7 @@ class Terminated(KeyboardInterrupt):
 
 def main(argv: Sequence[str] | None = None) -> int:
     """Run one command and return its exit status."""
+    _open_closed_streams()
     options = build_parser().parse_args(argv)
     logging.basicConfig(format="%(levelname)s %(name)s: %(message)s", level=logging.WARNING)
     try:
@@ -48,6 +49,13 @@ def main(argv: Sequence[str] | None = None) -> int:
     except KeyboardInterrupt:
         print("stonechat: interrupted", file=sys.stderr)
         return INTERRUPTED
+
+
+def _open_closed_streams() -> None:
+    """Give a standard stream that we were started without to nobody, before a database is opened in its place."""
+    for name, mode in (("stdin", "r"), ("stdout", "w"), ("stderr", "w")):
+        if getattr(sys, name) is None:
+            setattr(sys, name, os.fdopen(os.open(os.devnull, os.O_RDWR), mode))
 
 
 def _run(options: argparse.Namespace) -> int:
@@ -132,7 +140,7 @@ def _moment(text: str) -> float:
     try:
         return parse_utc(text)
     except FieldError as error:
-        raise argparse.ArgumentTypeError(error.problem) from None
+        raise argparse.ArgumentTypeError(printable(error.problem)) from None
 
 
 @contextmanager
@@ -150,7 +158,7 @@ def _stoppable() -> Iterator[None]:
 
 
 def _refuse(reason: str) -> int:
-    print(f"stonechat: {' '.join(reason.split())}", file=sys.stderr)
+    print(f"stonechat: {printable(' '.join(reason.split()))}", file=sys.stderr)
     return 1
 
 

@@ -47,9 +47,22 @@ class Settings(BaseSettings):
         url = _url(text)
         if url.drivername not in DRIVERS:
             raise ValueError("must begin with sqlite:/// or postgresql+psycopg://")
-        if url.drivername == "sqlite" and url.database in (None, "", ":memory:"):
-            raise ValueError("must name a file, such as sqlite:////var/lib/stonechat/stonechat.sqlite")
+        if "%00" in text:  # the driver would take what stands before it for the whole
+            raise ValueError("must not hold %00")
+        if url.drivername == "sqlite":
+            _check_sqlite(url)
+        if any("password" in name for name in url.query):
+            raise ValueError("must not carry a password after '?', where it would be shown; use PGPASSWORD")
         return text
+
+    @field_validator("dir", "database_url")
+    @classmethod
+    def _utf_8(cls, value: Path | str) -> Path | str:
+        try:
+            str(value).encode("utf-8")
+        except UnicodeEncodeError:
+            raise ValueError("is not UTF-8; use another name") from None
+        return value
 
     @model_validator(mode="after")
     def _horizons_inside_outlook(self) -> Self:
@@ -92,6 +105,13 @@ def _problems(error: ValidationError) -> Iterator[str]:
     for each in error.errors(include_url=False, include_context=False):
         name = PREFIX + str(each["loc"][0]).upper() if each["loc"] else "settings"
         yield f"{name}: {each['msg'].removeprefix('Value error, ')}"
+
+
+def _check_sqlite(url: URL) -> None:
+    if url.database in (None, "", ":memory:"):
+        raise ValueError("must name a file, such as sqlite:////var/lib/stonechat/stonechat.sqlite")
+    if url.query:
+        raise ValueError("takes no options after '?' with sqlite; leave them out")
 
 
 def _url(text: str) -> URL:

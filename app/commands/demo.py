@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import argparse
+import os
 import shutil
 import socket
 import tempfile
@@ -32,6 +33,12 @@ MARK = "stonechat-demo.txt"  # in a folder, it says that the database there may 
 MARK_TEXT = (
     "The database in this folder belongs to the demo; every `stonechat demo --dir` here makes it anew.\n"
 )
+SQLITE_ENDINGS = (
+    "",
+    "-wal",
+    "-shm",
+    "-journal",
+)  # all that a database is on disk; a copy beside it is somebody's
 PAGE = 500
 PINNED = ("mass_law", "horizon_low_days", "horizon_high_days", "outlook_days")
 HOST = "127.0.0.1"
@@ -96,11 +103,12 @@ def _folder(wanted: Path | None) -> Iterator[Path]:
             shutil.rmtree(folder)
         return
     wanted.mkdir(parents=True, exist_ok=True)
-    if (wanted / SQLITE_FILE).exists() and not (wanted / MARK).exists():
+    found = [path for ending in SQLITE_ENDINGS if os.path.lexists(path := wanted / f"{SQLITE_FILE}{ending}")]
+    if found and not (wanted / MARK).exists():
         raise SettingsError(
-            f"{wanted / SQLITE_FILE} was not made by the demo and will not be replaced; name another --dir"
+            f"{found[0]} was not made by the demo and will not be replaced; name another --dir"
         )
-    for leftover in wanted.glob(f"{SQLITE_FILE}*"):
+    for leftover in found:
         leftover.unlink()
     (wanted / MARK).write_text(MARK_TEXT, encoding="utf-8")
     yield wanted
@@ -139,9 +147,8 @@ def _say_what_next(port: int, example: str) -> None:
 
 @contextmanager
 def _listen(port: int) -> Iterator[socket.socket]:
-    from app.commands.serve import (
-        listen,
-    )  # the server's libraries take a second, which --once need not wait for
+    # The server's libraries take a second, which --once need not wait for.
+    from app.commands.serve import listen
 
     with listen(HOST, port) as listener:
         yield listener

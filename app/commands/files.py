@@ -22,3 +22,8 @@ def os_problem(error: OSError) -> str:
     """Say in one line what the system would not do, and to which file."""
     problem = error.strerror or str(error)
     return f"{error.filename}: {problem}" if error.filename is not None else problem
+
+
+def printable(text: str) -> str:
+    """Write line ends, and whatever else could steer a terminal, as escapes."""
+    return "".join(each if each.isprintable() else ascii(each)[1:-1] for each in text)

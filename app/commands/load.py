@@ -11,7 +11,7 @@ from typing import TypeVar
 
 from sqlalchemy.orm import Session
 
-from app.commands.files import os_problem, read_file
+from app.commands.files import os_problem, printable, read_file
 from app.commands.register import Register, read_register
 from app.core.orbit.elements import MeanElements
 from app.core.sky.times import format_utc
@@ -45,7 +45,7 @@ def run(options: argparse.Namespace) -> int:
     with open_store(settings, create=False) as store:
         store.require_head()
         for line in load_files(store, options.files):
-            print(f"refused: {line.text}" if line.refused else line.text)
+            print(printable(f"refused: {line.text}" if line.refused else line.text))
             refused, total = refused + line.refused, total + 1
     if refused:
         rest = "nothing was stored" if refused == total else "the rest is in the database"

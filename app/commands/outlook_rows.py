@@ -35,10 +35,10 @@ def passage_block(scenario: Scenario, satellite: Satellite, advisory: Advisory) 
     yield f"{advisory['level'].upper()}  {advisory['passage']} {advisory['stream_name']}"
     yield f"  peak     {_peak(scenario, advisory)}"
     yield f"  lasts    {scenario.span(advisory['onset'], advisory['end'])}"
-    for label in LABELS:
+    for label in _labels(advisory):
         worst = worst_face(advisory, label)
         if worst is not None:
-            factor = f"{label} {factor_text(worst[0])} on {cut(worst[1], 22)}"
+            factor = f"{cut(label, 12)} {factor_text(worst[0])} on {cut(worst[1], 22)}"
             yield f"  factor   {factor:<42}impacts {_impacts(advisory, label)}"
     yield from textwrap.wrap(
         _lee(scenario, satellite, advisory), WIDTH, initial_indent="  lee      ", subsequent_indent=" " * 11
@@ -63,6 +63,12 @@ def steady_table(scenario: Scenario, advisories: Sequence[Advisory]) -> Iterator
             yield cut(f"         worst face: {', '.join(named)}", WIDTH)
 
 
+def _labels(advisory: Advisory) -> list[str]:
+    """Criteria of the advisory, the two of the tables first: any of them may have raised the level."""
+    own = dict.fromkeys(e["criterion"] for e in advisory["enhancement_peak"])
+    return [*LABELS, *(label for label in own if label not in LABELS)]
+
+
 def worst_face(advisory: Advisory, label: str) -> tuple[float, str] | None:
     """Largest factor of a criterion and the face it is on; None when no face has the criterion."""
     found = [(e["mid"], e["face"]) for e in advisory["enhancement_peak"] if e["criterion"] == label]
@@ -84,7 +90,7 @@ def _peak(scenario: Scenario, advisory: Advisory) -> str:
 
 def _figures(advisory: Advisory, label: str) -> str:
     worst = worst_face(advisory, label)
-    return " " * 19 if worst is None else f"{factor_text(worst[0]):<5} {_impacts(advisory, label):<13}"
+    return f"{'-':<19}" if worst is None else f"{factor_text(worst[0]):<5} {_impacts(advisory, label):<13}"
 
 
 def _impacts(advisory: Advisory, label: str) -> str:

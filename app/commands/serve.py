@@ -37,8 +37,8 @@ def listen(host: str, port: int) -> socket.socket:
             0
         ]
         return socket.create_server(where[:2], family=family, backlog=BACKLOG)
-    except OSError as error:
-        problem = error.strerror or str(error)
+    except (OSError, UnicodeError) as error:  # the latter: a name that cannot be one of the DNS
+        problem = getattr(error, "strerror", None) or str(error)
         remedy = "give a free port and an address of this machine"
         raise StonechatError(f"cannot listen on {host}, port {port}: {problem}; {remedy}") from None
 
